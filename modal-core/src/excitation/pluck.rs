@@ -1,0 +1,86 @@
+//! Plucks: the string drawn aside at one place and let go from rest.
+
+use core::f64::consts::PI;
+
+use crate::bounds;
+use crate::error::Result;
+use crate::excitation::{Excitation, ModalState};
+use crate::maths::{sin_pi, sinc};
+use crate::series::{Mode, wave_number};
+use crate::string::StringSpec;
+
+/// A pluck by a point force.
+///
+/// a_n = 2 h sin(n π p) / (n² π² p (1−p)) / (1 + B n²): the triangle of height
+/// `h` at `p` (Lebl, *Notes on Diffy Qs*, section 4.7), with the factor of the
+/// static shape of a stiff string, which solves T y″ − E·I y⁗ = −F δ(x − pL).
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+pub struct PointPluck {
+    place: f64,
+    height_m: f64,
+}
+
+impl PointPluck {
+    /// A pluck at `place` (fraction of the length) of `height_m`.
+    ///
+    /// # Errors
+    /// A value outside [`bounds::PLACE`] or [`bounds::PLUCK_HEIGHT_M`].
+    pub fn new(place: f64, height_m: f64) -> Result<Self> {
+        Ok(Self {
+            place: bounds::PLACE.check(place)?,
+            height_m: bounds::PLUCK_HEIGHT_M.check(height_m)?,
+        })
+    }
+}
+
+impl Excitation for PointPluck {
+    fn mode(&self, mode: &Mode, string: &StringSpec) -> ModalState {
+        let n = f64::from(mode.n());
+        let spread = n * n * PI * PI * self.place * (1.0 - self.place);
+        let stiffness = 1.0 + string.inharmonicity() * n * n;
+        ModalState {
+            displacement: 2.0 * self.height_m * sin_pi(n * self.place) / (spread * stiffness),
+            velocity: 0.0,
+        }
+    }
+}
+
+/// A pluck by a plectrum or finger of finite width.
+///
+/// The point pluck times sin θ/θ with θ = n π w/(2L): the force is spread
+/// evenly over the width `w`, and the two straight sides are joined by a
+/// parabolic arc. `height_m` is the height of the sharp triangle; the string
+/// itself reaches h (1 − w/(8 L p (1−p))).
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+pub struct RoundedPluck {
+    point: PointPluck,
+    width_m: f64,
+}
+
+impl RoundedPluck {
+    /// A pluck at `place` (fraction of the length) of `height_m` by a tip of
+    /// `width_m`.
+    ///
+    /// # Errors
+    /// A value outside [`bounds::PLACE`], [`bounds::PLUCK_HEIGHT_M`] or
+    /// [`bounds::WIDTH_M`].
+    pub fn new(place: f64, height_m: f64, width_m: f64) -> Result<Self> {
+        Ok(Self {
+            point: PointPluck::new(place, height_m)?,
+            width_m: bounds::WIDTH_M.check(width_m)?,
+        })
+    }
+}
+
+impl Excitation for RoundedPluck {
+    fn mode(&self, mode: &Mode, string: &StringSpec) -> ModalState {
+        let sharp = self.point.mode(mode, string);
+        ModalState {
+            displacement: sharp.displacement
+                * sinc(0.5 * wave_number(mode.n(), string) * self.width_m),
+            velocity: 0.0,
+        }
+    }
+}

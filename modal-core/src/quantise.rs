@@ -1,0 +1,339 @@
+//! The one door from floating point to fixed point.
+//!
+//! On this side of the door everything is `f64` through `libm`, which gives
+//! the same bits on every target; what comes out is plain integers that a
+//! low-priority context can hand to the audio interrupt.
+
+use heapless::Vec;
+
+use crate::bank::{Coefficient, Group, Increment, MAX_GROUPS, SHIFTS};
+use crate::bounds::{self, Bound};
+use crate::error::{Error, Result};
+use crate::excitation::Excitation;
+use crate::fixed::{FULL_SCALE_Q31, Gain};
+use crate::loss::Loss;
+use crate::pickup::Pickup;
+use crate::plan::{HIGHEST_MODE_OF_SAMPLE_RATE, heard};
+use crate::series::{Mode, ModeSeries};
+
+const TWO_POW_31: f64 = 2_147_483_648.0;
+const TWO_POW_32: f64 = 4_294_967_296.0;
+
+/// Sum of the mode amplitudes of a start, as a share of digital full scale.
+/// Its upper end is the ceiling of the string that the start is meant for.
+pub const PLUCK_LEVEL: Bound = Bound {
+    name: "pluck level (sum of mode amplitudes)",
+    unit: "of full scale",
+    min: 0.0,
+    max: 1.0,
+};
+
+/// The exact sampled form of one mode.
+struct Sampled {
+    /// 1 − r, with r = e^(−σ T).
+    decay: f64,
+    /// k = 1 − r².
+    damping: f64,
+    /// e = (1 − r)² + 4 r sin²(θ/2).
+    restoring: f64,
+    /// θ = ω_d T.
+    angle: f64,
+}
+
+impl Sampled {
+    fn new(mode: &Mode, sample_rate_hz: f64) -> Result<Self> {
+        let loss = mode.decay_rate_per_s() / sample_rate_hz;
+        let damping = -libm::expm1(-2.0 * loss);
+        // -k must fit in 32 bits of Q32, and must not vanish.
+        let quantised = libm::rint(damping * TWO_POW_32).max(1.0) / TWO_POW_32;
+        if quantised * TWO_POW_32 > TWO_POW_31 {
+            return Err(Error::OutOfRange {
+                field: "decay rate at this sample rate",
+                unit: "1/s",
+                value: mode.decay_rate_per_s(),
+                min: bounds::DECAY_RATE.min,
+                max: 0.34 * sample_rate_hz,
+            });
+        }
+        // The pitch is computed for the decay that the integers really have.
+        let r = libm::sqrt(1.0 - quantised);
+        let decay = quantised / (1.0 + r);
+        let angle = mode.damped_angular() / sample_rate_hz;
+        let half = libm::sin(0.5 * angle);
+        Ok(Self {
+            decay,
+            damping: quantised,
+            restoring: decay * decay + 4.0 * r * half * half,
+            angle,
+        })
+    }
+
+    fn r(&self) -> f64 {
+        1.0 - self.decay
+    }
+
+    /// v[0] = q[0] − q[−1] of a mode with displacement `a` and quadrature `c`
+    /// (the amplitude of its sine part) at frame 0, without cancellation:
+    /// (a (2 sin²(θ/2) − (1 − r)) + c sin θ) / r.
+    fn velocity(&self, a: f64, c: f64) -> f64 {
+        let half = libm::sin(0.5 * self.angle);
+        (a * (2.0 * half * half - self.decay) + c * libm::sin(self.angle)) / self.r()
+    }
+
+    /// Largest scale shift with |v|·2^S < 1 for amplitudes up to `ceiling`
+    /// (|v| ≤ A √e / r) and e·2^S < 1/2, so that both fit in 32 bits.
+    fn shift(&self, ceiling: f64) -> i8 {
+        let speed = ceiling * libm::sqrt(self.restoring) / self.r();
+        let mut shift = *SHIFTS.end();
+        while shift > *SHIFTS.start()
+            && (scale(shift) * speed >= 1.0 || scale(shift) * self.restoring >= 0.5)
+        {
+            shift -= 1;
+        }
+        shift
+    }
+
+    /// Most that rounding of q can add up to in this mode's amplitude, in
+    /// units of q: half a step a frame, times √e/sin θ for its amplitude,
+    /// summed over all the past, 1/(1 − r).
+    fn rounding_reserve(&self, shift: i8) -> f64 {
+        let step = if shift < 0 { scale(-shift) } else { 1.0 };
+        0.5 * step * libm::sqrt(self.restoring) / (libm::sin(self.angle) * self.decay)
+    }
+}
+
+/// 2^`shift`.
+fn scale(shift: i8) -> f64 {
+    libm::ldexp(1.0, i32::from(shift))
+}
+
+/// What a string sounds like, in integers: coefficients of up to `M` modes.
+///
+/// A plain value of 8 bytes a mode: one context prepares it and hands it to
+/// another.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Coefficients<const M: usize> {
+    pub(crate) coefficients: Vec<Coefficient, M>,
+    pub(crate) groups: Vec<Group, MAX_GROUPS>,
+    /// Most that the amplitudes of all modes may sum to, Q31, rounding reserved.
+    pub(crate) ceiling: u32,
+    /// 1 − r of the mode that decays slowest, Q64, rounded down.
+    pub(crate) slowest_decay_q64: u64,
+    /// Largest k/(2 r sin θ) of any mode, Q16, rounded up: how much an exchange
+    /// of coefficients can add to an amplitude.
+    pub(crate) growth_q16: u32,
+    sample_rate_hz: f64,
+}
+
+impl<const M: usize> Coefficients<M> {
+    /// Quantises modes 1 to `modes` of `series` for `sample_rate_hz`.
+    ///
+    /// Modes at or above 0.45 of the sample rate are left out. `ceiling` is the
+    /// share of digital full scale (0 to 1) that this string may fill; the
+    /// ceilings of all strings of an instrument may sum to 1.
+    ///
+    /// Frequencies are off by less than 2^(−33−S)/(2e) of themselves and decay
+    /// rates by less than 2^(−33)/k, with k, e and S of [`crate::bank`].
+    ///
+    /// # Errors
+    /// [`Error::Count`] for no modes or more than `M`; a value outside
+    /// [`bounds::SAMPLE_RATE_HZ`] or [`bounds::CEILING`]; a first mode at or
+    /// above 0.45 of the sample rate; a mode that decays too fast for the
+    /// sample rate, or modes that decay so slowly that the reserve for rounding
+    /// would take half of the ceiling; errors of [`ModeSeries::mode`].
+    pub fn prepare<L: Loss>(
+        series: &ModeSeries<L>,
+        modes: u32,
+        sample_rate_hz: f64,
+        ceiling: f64,
+    ) -> Result<Self> {
+        bounds::SAMPLE_RATE_HZ.check(sample_rate_hz)?;
+        bounds::CEILING.check(ceiling)?;
+        if modes == 0 || modes as usize > M {
+            return Err(Error::Count {
+                field: "modes",
+                wanted: modes,
+                capacity: M as u32,
+            });
+        }
+        let limit_hz = HIGHEST_MODE_OF_SAMPLE_RATE * sample_rate_hz;
+        let below = series.modes_below(limit_hz);
+        if below == 0 {
+            return Err(Error::OutOfRange {
+                field: "frequency of mode 1 at this sample rate",
+                unit: "Hz",
+                value: series.frequency_hz(1),
+                min: bounds::FREQUENCY_HZ.min,
+                max: limit_hz,
+            });
+        }
+
+        let mut coefficients = Vec::new();
+        let mut groups: Vec<Group, MAX_GROUPS> = Vec::new();
+        let mut shift = *SHIFTS.end();
+        let (mut reserve, mut slowest_decay, mut growth) = (0.0, 1.0_f64, 0.0_f64);
+        for n in 1..=modes.min(below) {
+            let sampled = Sampled::new(&series.mode(n)?, sample_rate_hz)?;
+            // The pull rises with the mode; a law of losses that bends it back
+            // must not break the order of the groups.
+            shift = shift.min(sampled.shift(ceiling));
+            match groups.last_mut() {
+                Some(group) if group.shift == shift => group.modes += 1,
+                // Shifts fall, so there are no more groups than shifts.
+                _ => {
+                    let _ = groups.push(Group { shift, modes: 1 });
+                }
+            }
+            let restoring = libm::rint(sampled.restoring * TWO_POW_32 * scale(shift));
+            // Room for `modes` <= M was checked.
+            let _ = coefficients.push(Coefficient {
+                damping: -(sampled.damping * TWO_POW_32) as i32,
+                restoring: -restoring as i32,
+            });
+            reserve += sampled.rounding_reserve(shift);
+            slowest_decay = slowest_decay.min(sampled.decay);
+            growth = growth.max(sampled.damping / (2.0 * sampled.r() * libm::sin(sampled.angle)));
+        }
+
+        let reserve_share = reserve / TWO_POW_31;
+        if reserve_share > 0.5 * ceiling {
+            return Err(Error::OutOfRange {
+                field: "reserve for the rounding of slow modes",
+                unit: "of full scale",
+                value: reserve_share,
+                min: 0.0,
+                max: 0.5 * ceiling,
+            });
+        }
+        Ok(Self {
+            coefficients,
+            groups,
+            ceiling: (ceiling * f64::from(FULL_SCALE_Q31) - libm::ceil(reserve)) as u32,
+            slowest_decay_q64: (slowest_decay * TWO_POW_32 * TWO_POW_32) as u64,
+            growth_q16: libm::ceil(growth * 65_536.0) as u32,
+            sample_rate_hz,
+        })
+    }
+
+    /// Number of modes that are computed.
+    #[must_use]
+    pub fn modes(&self) -> usize {
+        self.coefficients.len()
+    }
+
+    /// The integers of each mode, by rising frequency.
+    #[must_use]
+    pub fn as_slice(&self) -> &[Coefficient] {
+        &self.coefficients
+    }
+
+    /// The runs of modes of equal scale shift, in the order of the modes.
+    #[must_use]
+    pub fn groups(&self) -> &[Group] {
+        &self.groups
+    }
+
+    /// Most that the amplitudes of all modes may sum to, Q31.
+    #[must_use]
+    pub fn ceiling_q31(&self) -> u32 {
+        self.ceiling
+    }
+
+    /// The sample rate in Hz that the coefficients are made for.
+    #[must_use]
+    pub fn sample_rate_hz(&self) -> f64 {
+        self.sample_rate_hz
+    }
+}
+
+/// A prepared start: what a pluck or strike adds to the state of each mode.
+///
+/// A plain value of 12 bytes a mode. It may be added while the voice has other
+/// coefficients than it was prepared with (a muted string, say).
+#[derive(Clone, Debug, PartialEq)]
+pub struct Onset<const M: usize> {
+    increments: Vec<Increment, M>,
+    pub(crate) groups: Vec<Group, MAX_GROUPS>,
+    level: u32,
+}
+
+impl<const M: usize> Onset<M> {
+    /// Quantises `excitation` as heard by `pickup`.
+    ///
+    /// `full_scale` is the heard output (m for displacement, m/s for velocity)
+    /// that is digital full scale; [`crate::plan::l1_bound`] of the hardest
+    /// pluck, divided by the ceiling, is the smallest that always fits.
+    ///
+    /// # Errors
+    /// `full_scale` outside [`bounds::FULL_SCALE`]; a sum of mode amplitudes
+    /// above the ceiling of `coefficients`; errors of [`ModeSeries::mode`].
+    pub fn prepare<L: Loss>(
+        coefficients: &Coefficients<M>,
+        series: &ModeSeries<L>,
+        excitation: &impl Excitation,
+        pickup: &impl Pickup,
+        full_scale: f64,
+    ) -> Result<Self> {
+        bounds::FULL_SCALE.check(full_scale)?;
+        let mut increments = Vec::new();
+        let mut level = 0.0;
+        let mut shifts = crate::bank::shifts(&coefficients.groups);
+        for n in 1..=coefficients.coefficients.len() as u32 {
+            let Some(shift) = shifts.next() else { break };
+            let (mode, state) = heard(series, excitation, pickup, n)?;
+            let a = state.displacement / full_scale;
+            let c = state.quadrature(&mode) / full_scale;
+            let sampled = Sampled::new(&mode, coefficients.sample_rate_hz)?;
+            let velocity = sampled.velocity(a, c) * TWO_POW_31 * TWO_POW_32 * scale(shift);
+            // Casts saturate; the level below refuses whatever would not fit.
+            let _ = increments.push(Increment::new(
+                libm::rint(a * TWO_POW_31) as i32,
+                libm::rint(velocity) as i64,
+            ));
+            // One unit more for the rounding of the increment itself.
+            level += libm::hypot(a, c) * TWO_POW_31 + 1.0;
+        }
+        let ceiling = f64::from(coefficients.ceiling);
+        // Written so that NaN is refused.
+        if level <= ceiling {
+            Ok(Self {
+                increments,
+                groups: coefficients.groups.clone(),
+                level: libm::ceil(level) as u32,
+            })
+        } else {
+            Err(Error::OutOfRange {
+                field: PLUCK_LEVEL.name,
+                unit: PLUCK_LEVEL.unit,
+                value: level / TWO_POW_31,
+                min: PLUCK_LEVEL.min,
+                max: ceiling / TWO_POW_31,
+            })
+        }
+    }
+
+    /// What is added to each mode, by rising frequency.
+    #[must_use]
+    pub fn increments(&self) -> &[Increment] {
+        &self.increments
+    }
+
+    /// Bound of the sum of the amplitudes that are added, Q31.
+    #[must_use]
+    pub fn level_q31(&self) -> u32 {
+        self.level
+    }
+
+    /// The same start, `gain` times as strong.
+    #[must_use]
+    pub fn scaled(&self, gain: Gain) -> Self {
+        Self {
+            increments: self.increments.iter().map(|one| one.scaled(gain)).collect(),
+            groups: self.groups.clone(),
+            // Rounding can add one unit to each mode.
+            level: gain
+                .apply_level(self.level)
+                .saturating_add(self.increments.len() as u32),
+        }
+    }
+}
