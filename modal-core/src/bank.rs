@@ -1,6 +1,6 @@
 //! A bank of modes: fixed coefficients, changing state, integers only.
 //!
-//! One mode obeys, exactly at the sample instants, with v[n] = q[n] − q[n−1]:
+//! One mode obeys, exactly at the sample instants, with `v[n] = q[n] − q[n−1]`:
 //!
 //! ```text
 //! v[n+1] = v[n] − k v[n] − e q[n]
@@ -58,7 +58,7 @@ impl State {
             velocity_low: 0,
             velocity_high: 0,
         };
-        rest.set_velocity(1 << (31 + if shift > 0 { shift } else { 0 }));
+        rest.set_velocity(1 << (31 + shift));
         rest
     }
 
@@ -190,7 +190,7 @@ impl<const M: usize> Bank<M> {
         }
     }
 
-    /// Exchanges the coefficients and keeps the sound: q[n] and q[n] − q[n−1]
+    /// Exchanges the coefficients and keeps the sound: `q[n]` and `q[n] − q[n−1]`
     /// of every mode stay, whatever the new shifts. Modes that the new set
     /// lacks are dropped, modes that it adds start at rest.
     pub(crate) fn retune(

@@ -72,7 +72,7 @@ impl Sampled {
         1.0 - self.decay
     }
 
-    /// v[0] = q[0] − q[−1] of a mode with displacement `a` and quadrature `c`
+    /// `v[0] = q[0] − q[−1]` of a mode with displacement `a` and quadrature `c`
     /// (the amplitude of its sine part) at frame 0, without cancellation:
     /// (a (2 sin²(θ/2) − (1 − r)) + c sin θ) / r.
     fn velocity(&self, a: f64, c: f64) -> f64 {
@@ -96,9 +96,8 @@ impl Sampled {
     /// Most that rounding of q can add up to in this mode's amplitude, in
     /// units of q: half a step a frame, times √e/sin θ for its amplitude,
     /// summed over all the past, 1/(1 − r).
-    fn rounding_reserve(&self, shift: i8) -> f64 {
-        let step = if shift < 0 { scale(-shift) } else { 1.0 };
-        0.5 * step * libm::sqrt(self.restoring) / (libm::sin(self.angle) * self.decay)
+    fn rounding_reserve(&self) -> f64 {
+        0.5 * libm::sqrt(self.restoring) / (libm::sin(self.angle) * self.decay)
     }
 }
 
@@ -190,7 +189,7 @@ impl<const M: usize> Coefficients<M> {
                 damping: -(sampled.damping * TWO_POW_32) as i32,
                 restoring: -restoring as i32,
             });
-            reserve += sampled.rounding_reserve(shift);
+            reserve += sampled.rounding_reserve();
             slowest_decay = slowest_decay.min(sampled.decay);
             growth = growth.max(sampled.damping / (2.0 * sampled.r() * libm::sin(sampled.angle)));
         }

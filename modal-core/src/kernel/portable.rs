@@ -61,13 +61,7 @@ impl<const SHIFT: i32> Running<SHIFT> {
             .velocity
             .wrapping_add(self.damping * (self.velocity >> 32))
             .wrapping_add(self.restoring * i64::from(now));
-        let high = (self.velocity >> 32) as i32;
-        let moved = if SHIFT >= 0 {
-            high >> SHIFT
-        } else {
-            high << -SHIFT
-        };
-        self.q = now.wrapping_add(moved);
+        self.q = now.wrapping_add((self.velocity >> (32 + SHIFT)) as i32);
         now
     }
 
