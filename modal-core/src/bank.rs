@@ -16,11 +16,15 @@ use heapless::Vec;
 use crate::fixed::Gain;
 use crate::kernel;
 
-/// The smallest and largest scale shift S of a group of modes.
-pub const SHIFTS: core::ops::RangeInclusive<i8> = -3..=10;
+/// The scale shifts S that a group of modes can have, falling as the pitch
+/// rises. Every one is a kernel of its own, so there are no more than pay.
+pub const SHIFTS: [i8; 8] = [10, 8, 6, 4, 2, 0, -1, -2];
 
-/// Most groups of equal shift in a bank.
-pub const MAX_GROUPS: usize = 14;
+/// The scale shift of folded modes: the only one that holds e up to 2.
+pub const FOLDED_SHIFT: i8 = -2;
+
+/// Most groups in a bank: one a shift, and the folded one.
+pub const MAX_GROUPS: usize = SHIFTS.len() + 1;
 
 /// The two numbers of one mode that do not change from sample to sample.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -31,6 +35,37 @@ pub struct Coefficient {
     pub damping: i32,
     /// −e in Q(32+S): −(1 + r² − 2 r cos θ), the pull back to rest.
     pub restoring: i32,
+}
+
+impl Coefficient {
+    /// Upper bound of the amplitude (Q31) of a mode with displacement `q` (Q31)
+    /// and one-frame step `velocity` (Q31 with 16 more fractional bits).
+    ///
+    /// q[n] = A r^n cos(θ n − φ) has A² = q² + c², and from k and e alone
+    /// c = ((1−k) v − q (e−k)/2) / s with s = r sin θ = √(e − ((e+k)/2)²).
+    fn amplitude(self, shift: i8, q: i32, velocity: i64) -> u64 {
+        let damping_q31 = i64::from(self.damping.unsigned_abs()) >> 1;
+        // At most 2 in Q62.
+        let restoring_q62 = u64::from(self.restoring.unsigned_abs()) << (30 - shift);
+        let restoring_q31 = (restoring_q62 >> 31) as i64;
+        let half_sum = ((restoring_q31 + damping_q31) >> 1) as u64;
+        let sine_q31 = restoring_q62
+            .saturating_sub(half_sum * half_sum)
+            .isqrt()
+            .max(1);
+
+        let kept = velocity - (((velocity >> 16) * damping_q31) >> 15);
+        let pulled = (i64::from(q) * ((restoring_q31 - damping_q31) >> 1)) >> 15;
+        let quadrature =
+            (kept.saturating_sub(pulled).unsigned_abs().min(1 << 49) << 14) / sine_q31.div_ceil(2);
+        // The roundings above and that of the root are below two units.
+        let q = u64::from(q.unsigned_abs());
+        if quadrature < 1 << 31 {
+            (q * q + quadrature * quadrature).isqrt() + 2
+        } else {
+            q + quadrature + 2
+        }
+    }
 }
 
 /// What changes from sample to sample in one mode.
@@ -58,8 +93,13 @@ impl State {
             velocity_low: 0,
             velocity_high: 0,
         };
-        rest.set_velocity(1 << (31 + shift));
+        rest.set_velocity(rest_velocity(shift));
         rest
+    }
+
+    /// `q[n] − q[n−1]` as an accumulator without the offset of rest.
+    const fn moving(&self, shift: i8) -> i64 {
+        self.velocity().wrapping_sub(rest_velocity(shift))
     }
 
     /// The 64-bit velocity accumulator.
@@ -112,13 +152,27 @@ impl Increment {
 }
 
 /// A run of modes that share a scale shift.
+///
+/// Above a quarter of the sample rate modes are *folded*: the state holds
+/// q·(−1)^n, which moves at half the sample rate less the frequency, so that e
+/// stays below 2; every second frame is heard with the opposite sign. A block
+/// begins with an even frame.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
 pub struct Group {
     /// The scale shift S, within [`SHIFTS`].
     pub shift: i8,
+    /// Whether the states are held with alternating sign.
+    pub folded: bool,
     /// How many modes.
     pub modes: u16,
+}
+
+impl Group {
+    /// Whether `other` is held in the same form.
+    pub(crate) const fn matches(&self, other: &Self) -> bool {
+        self.shift == other.shift && self.folded == other.folded
+    }
 }
 
 /// Up to `M` modes: coefficients in groups of equal shift, and their state.
@@ -161,18 +215,18 @@ impl<const M: usize> Bank<M> {
     /// Puts every mode at rest.
     pub fn clear(&mut self) {
         self.states.clear();
-        for shift in shifts(&self.groups) {
+        for form in forms(&self.groups) {
             // As many states as coefficients, which fit.
-            let _ = self.states.push(State::rest(shift));
+            let _ = self.states.push(State::rest(form.shift));
         }
     }
 
-    /// Adds `increments`, made for the shifts of `made_for`, to the state, mode
-    /// by mode: superposition.
+    /// Adds `increments`, made for the groups `made_for`, to the state, mode by
+    /// mode: superposition.
     pub(crate) fn add(&mut self, increments: impl Iterator<Item = Increment>, made_for: &[Group]) {
-        let both = shifts(made_for).zip(shifts(&self.groups));
+        let both = forms(made_for).zip(forms(&self.groups));
         for ((state, increment), (from, to)) in self.states.iter_mut().zip(increments).zip(both) {
-            let velocity = rescaled(increment.velocity(), from, to);
+            let velocity = converted(increment.q, increment.velocity(), from, to);
             state.q = state.q.wrapping_add(increment.q);
             state.set_velocity(state.velocity().wrapping_add(velocity));
         }
@@ -180,38 +234,57 @@ impl<const M: usize> Bank<M> {
 
     /// Makes every mode `gain` times as large.
     pub(crate) fn scale(&mut self, gain: Gain) {
-        for (state, shift) in self.states.iter_mut().zip(shifts(&self.groups)) {
-            let rest = State::rest(shift).velocity();
+        for (state, form) in self.states.iter_mut().zip(forms(&self.groups)) {
+            let moving = gain.apply_wide(state.moving(form.shift));
             state.q = gain.apply(state.q);
-            state.set_velocity(
-                gain.apply_wide(state.velocity().wrapping_sub(rest))
-                    .wrapping_add(rest),
-            );
+            state.set_velocity(moving.wrapping_add(rest_velocity(form.shift)));
         }
     }
 
-    /// Exchanges the coefficients and keeps the sound: `q[n]` and `q[n] − q[n−1]`
-    /// of every mode stay, whatever the new shifts. Modes that the new set
-    /// lacks are dropped, modes that it adds start at rest.
+    /// Exchanges the coefficients and keeps the sound: `q[n]` and
+    /// `q[n] − q[n−1]` of every mode stay, in whatever form the new groups hold
+    /// them. Modes that the new set lacks are dropped, modes that it adds start
+    /// at rest. [`Bank::level_with`] tells beforehand how loud that is.
     pub(crate) fn retune(
         &mut self,
         coefficients: &Vec<Coefficient, M>,
         groups: &Vec<Group, MAX_GROUPS>,
     ) {
-        let both = shifts(&self.groups).zip(shifts(groups));
+        let both = forms(&self.groups).zip(forms(groups));
         for (state, (from, to)) in self.states.iter_mut().zip(both) {
-            let velocity = state.velocity().wrapping_sub(State::rest(from).velocity());
-            state.set_velocity(
-                rescaled(velocity, from, to).wrapping_add(State::rest(to).velocity()),
-            );
+            let velocity = converted(state.q, state.moving(from.shift), from, to);
+            state.set_velocity(velocity.wrapping_add(rest_velocity(to.shift)));
         }
         self.states.truncate(coefficients.len());
-        for shift in shifts(groups).skip(self.states.len()) {
+        for form in forms(groups).skip(self.states.len()) {
             // As many states as coefficients, which fit.
-            let _ = self.states.push(State::rest(shift));
+            let _ = self.states.push(State::rest(form.shift));
         }
         self.coefficients.clone_from(coefficients);
         self.groups.clone_from(groups);
+    }
+
+    /// Upper bound of the sum of the amplitudes of all modes, Q31, from the
+    /// state itself.
+    #[must_use]
+    pub fn level(&self) -> u64 {
+        self.level_with(&self.coefficients, &self.groups)
+    }
+
+    /// The same as if the modes went on with other coefficients.
+    pub(crate) fn level_with(&self, coefficients: &[Coefficient], groups: &[Group]) -> u64 {
+        let both = forms(&self.groups).zip(forms(groups));
+        self.states
+            .iter()
+            .zip(coefficients)
+            .zip(both)
+            .map(|((state, coefficient), (from, to))| {
+                // 16 fractional bits: a velocity of 2·2^31 still fits twice.
+                let slow = Group { shift: -16, ..to };
+                let velocity = converted(state.q, state.moving(from.shift), from, slow);
+                coefficient.amplitude(to.shift, state.q, velocity)
+            })
+            .fold(0, u64::saturating_add)
     }
 
     /// Adds the next `B` frames of every mode to `block` and moves the state on.
@@ -224,24 +297,96 @@ impl<const M: usize> Bank<M> {
                 .min(states.len());
             let (now, later) = coefficients.split_at(modes);
             let (now_states, later_states) = states.split_at_mut(modes);
-            kernel::render(group.shift, now, now_states, block);
+            kernel::render(*group, now, now_states, block);
             (coefficients, states) = (later, later_states);
         }
     }
 }
 
-/// A velocity accumulator of scale shift `from`, for the shift `to`.
-const fn rescaled(velocity: i64, from: i8, to: i8) -> i64 {
-    if to >= from {
-        velocity << (to - from)
+/// The accumulator of a mode at rest: half a step of q.
+const fn rest_velocity(shift: i8) -> i64 {
+    1 << (31 + if shift > 0 { shift } else { 0 })
+}
+
+/// A velocity accumulator (without the offset of rest) of a mode with
+/// displacement `q`, held in the form `from`, in the form `to`.
+const fn converted(q: i32, velocity: i64, from: Group, to: Group) -> i64 {
+    let velocity = if to.shift >= from.shift {
+        velocity << (to.shift - from.shift)
     } else {
-        velocity >> (from - to)
+        velocity >> (from.shift - to.shift)
+    };
+    if from.folded == to.folded {
+        velocity
+    } else {
+        // The previous frame changes its sign: q − (−(q − v)) = 2 q − v.
+        ((q as i64) << (33 + to.shift)).wrapping_sub(velocity)
     }
 }
 
-/// The shift of every mode.
-pub(crate) fn shifts(groups: &[Group]) -> impl Iterator<Item = i8> {
+/// The form of every mode.
+pub(crate) fn forms(groups: &[Group]) -> impl Iterator<Item = Group> {
     groups
         .iter()
-        .flat_map(|group| core::iter::repeat_n(group.shift, usize::from(group.modes)))
+        .flat_map(|group| core::iter::repeat_n(*group, usize::from(group.modes)))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// The amplitude from k, e, q and v is that of A r^n cos(θ n − φ).
+    #[test]
+    fn amplitude_is_that_of_the_closed_form() {
+        for (shift, angle, loss) in [
+            (10_i8, 0.004_f64, 1.0e-6_f64),
+            (8, 0.004, 1.0e-3),
+            (4, 0.01, 1.0e-5),
+            (2, 0.1, 1.0e-2),
+            (0, 0.6, 1.0e-4),
+            (-1, 0.9, 0.3),
+            (-2, 1.5, 1.0e-5),
+        ] {
+            let r = (-loss).exp();
+            let damping = 1.0 - r * r;
+            let restoring = (1.0 - r).powi(2) + 4.0 * r * (0.5 * angle).sin().powi(2);
+            let coefficient = Coefficient {
+                damping: -(damping * 2.0_f64.powi(32)).round() as i32,
+                restoring: -(restoring * 2.0_f64.powi(32 + i32::from(shift))).round() as i32,
+            };
+            let amplitude = 0.3 * 2.0_f64.powi(31);
+            for step in 0..100 {
+                let phase = f64::from(step) * 0.0631;
+                let q = amplitude * phase.cos();
+                let velocity = q - amplitude / r * (phase - angle).cos();
+                let stated = coefficient.amplitude(
+                    shift,
+                    q.round() as i32,
+                    (velocity * 65_536.0).round() as i64,
+                );
+                let excess = stated as f64 - amplitude;
+                // The coefficients of the test are rounded, too.
+                let tolerance = amplitude * 1.0e-6;
+                assert!((-tolerance..tolerance).contains(&excess), "{excess}");
+            }
+        }
+    }
+
+    /// Folding turns the sign of every second frame, nothing else.
+    #[test]
+    fn folding_there_and_back_is_exact() {
+        let plain = Group {
+            shift: -2,
+            folded: false,
+            modes: 1,
+        };
+        let folded = Group {
+            folded: true,
+            ..plain
+        };
+        for (q, velocity) in [(1 << 30, -(7_i64 << 56)), (-123_456, 1 << 59), (0, 99)] {
+            let there = converted(q, velocity, plain, folded);
+            assert_eq!(converted(q, there, folded, plain), velocity);
+        }
+    }
 }

@@ -4,9 +4,11 @@
 //! the same bits on every target; what comes out is plain integers that a
 //! low-priority context can hand to the audio interrupt.
 
+use core::f64::consts::{FRAC_PI_2, LN_2, PI};
+
 use heapless::Vec;
 
-use crate::bank::{Coefficient, Group, Increment, MAX_GROUPS, SHIFTS};
+use crate::bank::{Coefficient, FOLDED_SHIFT, Group, Increment, MAX_GROUPS, SHIFTS, forms};
 use crate::bounds::{self, Bound};
 use crate::error::{Error, Result};
 use crate::excitation::Excitation;
@@ -28,7 +30,11 @@ pub const PLUCK_LEVEL: Bound = Bound {
     max: 1.0,
 };
 
-/// The exact sampled form of one mode.
+/// Most modes of one string: a group counts its modes in 16 bits.
+const MOST_MODES: usize = u16::MAX as usize;
+
+/// The exact sampled form of one mode, as its state is held (see [`Group`]:
+/// a folded mode moves at π − θ).
 struct Sampled {
     /// 1 − r, with r = e^(−σ T).
     decay: f64,
@@ -36,35 +42,42 @@ struct Sampled {
     damping: f64,
     /// e = (1 − r)² + 4 r sin²(θ/2).
     restoring: f64,
-    /// θ = ω_d T.
+    /// θ = ω_d T, or π less that.
     angle: f64,
+    folded: bool,
 }
 
 impl Sampled {
     fn new(mode: &Mode, sample_rate_hz: f64) -> Result<Self> {
         let loss = mode.decay_rate_per_s() / sample_rate_hz;
-        let damping = -libm::expm1(-2.0 * loss);
-        // -k must fit in 32 bits of Q32, and must not vanish.
-        let quantised = libm::rint(damping * TWO_POW_32).max(1.0) / TWO_POW_32;
-        if quantised * TWO_POW_32 > TWO_POW_31 {
+        // Rounded to what the integers hold; it must not vanish.
+        let damping = libm::rint(-libm::expm1(-2.0 * loss) * TWO_POW_32).max(1.0) / TWO_POW_32;
+        if damping > 0.5 {
             return Err(Error::OutOfRange {
                 field: "decay rate at this sample rate",
                 unit: "1/s",
                 value: mode.decay_rate_per_s(),
                 min: bounds::DECAY_RATE.min,
-                max: 0.34 * sample_rate_hz,
+                max: 0.5 * LN_2 * sample_rate_hz,
             });
         }
         // The pitch is computed for the decay that the integers really have.
-        let r = libm::sqrt(1.0 - quantised);
-        let decay = quantised / (1.0 + r);
-        let angle = mode.damped_angular() / sample_rate_hz;
+        let r = libm::sqrt(1.0 - damping);
+        let decay = damping / (1.0 + r);
+        let heard_angle = mode.damped_angular() / sample_rate_hz;
+        let folded = heard_angle > FRAC_PI_2;
+        let angle = if folded {
+            PI - heard_angle
+        } else {
+            heard_angle
+        };
         let half = libm::sin(0.5 * angle);
         Ok(Self {
             decay,
-            damping: quantised,
+            damping,
             restoring: decay * decay + 4.0 * r * half * half,
             angle,
+            folded,
         })
     }
 
@@ -74,9 +87,10 @@ impl Sampled {
 
     /// `v[0] = q[0] − q[−1]` of a mode with displacement `a` and quadrature `c`
     /// (the amplitude of its sine part) at frame 0, without cancellation:
-    /// (a (2 sin²(θ/2) − (1 − r)) + c sin θ) / r.
+    /// (a (2 sin²(θ/2) − (1 − r)) + c sin θ) / r. Folding turns the sine over.
     fn velocity(&self, a: f64, c: f64) -> f64 {
         let half = libm::sin(0.5 * self.angle);
+        let c = if self.folded { -c } else { c };
         (a * (2.0 * half * half - self.decay) + c * libm::sin(self.angle)) / self.r()
     }
 
@@ -84,20 +98,18 @@ impl Sampled {
     /// (|v| ≤ A √e / r) and e·2^S < 1/2, so that both fit in 32 bits.
     fn shift(&self, ceiling: f64) -> i8 {
         let speed = ceiling * libm::sqrt(self.restoring) / self.r();
-        let mut shift = *SHIFTS.end();
-        while shift > *SHIFTS.start()
-            && (scale(shift) * speed >= 1.0 || scale(shift) * self.restoring >= 0.5)
-        {
-            shift -= 1;
-        }
-        shift
+        let fits = |&shift: &i8| scale(shift) * speed < 1.0 && scale(shift) * self.restoring < 0.5;
+        // e < 2 below a quarter of the sample rate, and ceiling <= 1: the last
+        // shift always fits.
+        SHIFTS.into_iter().find(fits).unwrap_or(FOLDED_SHIFT)
     }
 
     /// Most that rounding of q can add up to in this mode's amplitude, in
     /// units of q: half a step a frame, times √e/sin θ for its amplitude,
     /// summed over all the past, 1/(1 − r).
-    fn rounding_reserve(&self) -> f64 {
-        0.5 * libm::sqrt(self.restoring) / (libm::sin(self.angle) * self.decay)
+    fn rounding_reserve(&self, shift: i8) -> f64 {
+        let step = scale((-shift).max(0));
+        0.5 * step * libm::sqrt(self.restoring) / (libm::sin(self.angle) * self.decay)
     }
 }
 
@@ -118,9 +130,6 @@ pub struct Coefficients<const M: usize> {
     pub(crate) ceiling: u32,
     /// 1 − r of the mode that decays slowest, Q64, rounded down.
     pub(crate) slowest_decay_q64: u64,
-    /// Largest k/(2 r sin θ) of any mode, Q16, rounded up: how much an exchange
-    /// of coefficients can add to an amplitude.
-    pub(crate) growth_q16: u32,
     sample_rate_hz: f64,
 }
 
@@ -148,11 +157,11 @@ impl<const M: usize> Coefficients<M> {
     ) -> Result<Self> {
         bounds::SAMPLE_RATE_HZ.check(sample_rate_hz)?;
         bounds::CEILING.check(ceiling)?;
-        if modes == 0 || modes as usize > M {
+        if modes == 0 || modes as usize > M.min(MOST_MODES) {
             return Err(Error::Count {
                 field: "modes",
                 wanted: modes,
-                capacity: M as u32,
+                capacity: M.min(MOST_MODES) as u32,
             });
         }
         let limit_hz = HIGHEST_MODE_OF_SAMPLE_RATE * sample_rate_hz;
@@ -169,18 +178,36 @@ impl<const M: usize> Coefficients<M> {
 
         let mut coefficients = Vec::new();
         let mut groups: Vec<Group, MAX_GROUPS> = Vec::new();
-        let mut shift = *SHIFTS.end();
-        let (mut reserve, mut slowest_decay, mut growth) = (0.0, 1.0_f64, 0.0_f64);
-        for n in 1..=modes.min(below) {
-            let sampled = Sampled::new(&series.mode(n)?, sample_rate_hz)?;
-            // The pull rises with the mode; a law of losses that bends it back
-            // must not break the order of the groups.
-            shift = shift.min(sampled.shift(ceiling));
+        let count = modes.min(below);
+        let sample = |n: u32| Sampled::new(&series.mode(n)?, sample_rate_hz);
+        let mut shift = SHIFTS[0];
+        let (mut reserve, mut slowest_decay) = (0.0, 1.0_f64);
+        let mut sampled = sample(1)?;
+        for n in 1..=count {
+            let next = if n < count {
+                Some(sample(n + 1)?)
+            } else {
+                None
+            };
+            // Two modes run side by side and share a shift; the higher one
+            // decides. Shifts never rise again, which bounds the groups.
+            let opens_a_pair = n % 2 == 1;
+            let partner = next.as_ref().filter(|next| opens_a_pair && !next.folded);
+            shift = if sampled.folded {
+                FOLDED_SHIFT
+            } else {
+                shift.min(partner.unwrap_or(&sampled).shift(ceiling))
+            };
+            let form = Group {
+                shift,
+                folded: sampled.folded,
+                modes: 1,
+            };
             match groups.last_mut() {
-                Some(group) if group.shift == shift => group.modes += 1,
-                // Shifts fall, so there are no more groups than shifts.
+                Some(group) if group.matches(&form) => group.modes += 1,
+                // No more groups than falling shifts and the folded one.
                 _ => {
-                    let _ = groups.push(Group { shift, modes: 1 });
+                    let _ = groups.push(form);
                 }
             }
             let restoring = libm::rint(sampled.restoring * TWO_POW_32 * scale(shift));
@@ -189,9 +216,11 @@ impl<const M: usize> Coefficients<M> {
                 damping: -(sampled.damping * TWO_POW_32) as i32,
                 restoring: -restoring as i32,
             });
-            reserve += sampled.rounding_reserve();
+            reserve += sampled.rounding_reserve(shift);
             slowest_decay = slowest_decay.min(sampled.decay);
-            growth = growth.max(sampled.damping / (2.0 * sampled.r() * libm::sin(sampled.angle)));
+            if let Some(next) = next {
+                sampled = next;
+            }
         }
 
         let reserve_share = reserve / TWO_POW_31;
@@ -209,7 +238,6 @@ impl<const M: usize> Coefficients<M> {
             groups,
             ceiling: (ceiling * f64::from(FULL_SCALE_Q31) - libm::ceil(reserve)) as u32,
             slowest_decay_q64: (slowest_decay * TWO_POW_32 * TWO_POW_32) as u64,
-            growth_q16: libm::ceil(growth * 65_536.0) as u32,
             sample_rate_hz,
         })
     }
@@ -252,7 +280,7 @@ impl<const M: usize> Coefficients<M> {
 #[derive(Clone, Debug, PartialEq)]
 pub struct Onset<const M: usize> {
     increments: Vec<Increment, M>,
-    pub(crate) groups: Vec<Group, MAX_GROUPS>,
+    groups: Vec<Group, MAX_GROUPS>,
     level: u32,
 }
 
@@ -276,14 +304,14 @@ impl<const M: usize> Onset<M> {
         bounds::FULL_SCALE.check(full_scale)?;
         let mut increments = Vec::new();
         let mut level = 0.0;
-        let mut shifts = crate::bank::shifts(&coefficients.groups);
+        let mut forms = forms(&coefficients.groups);
         for n in 1..=coefficients.coefficients.len() as u32 {
-            let Some(shift) = shifts.next() else { break };
+            let Some(form) = forms.next() else { break };
             let (mode, state) = heard(series, excitation, pickup, n)?;
             let a = state.displacement / full_scale;
             let c = state.quadrature(&mode) / full_scale;
             let sampled = Sampled::new(&mode, coefficients.sample_rate_hz)?;
-            let velocity = sampled.velocity(a, c) * TWO_POW_31 * TWO_POW_32 * scale(shift);
+            let velocity = sampled.velocity(a, c) * TWO_POW_31 * TWO_POW_32 * scale(form.shift);
             // Casts saturate; the level below refuses whatever would not fit.
             let _ = increments.push(Increment::new(
                 libm::rint(a * TWO_POW_31) as i32,
@@ -315,6 +343,12 @@ impl<const M: usize> Onset<M> {
     #[must_use]
     pub fn increments(&self) -> &[Increment] {
         &self.increments
+    }
+
+    /// The groups that the increments are made for.
+    #[must_use]
+    pub fn groups(&self) -> &[Group] {
+        &self.groups
     }
 
     /// Bound of the sum of the amplitudes that are added, Q31.

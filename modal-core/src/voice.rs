@@ -2,7 +2,7 @@
 //!
 //! The voice keeps an upper bound of the sum of the amplitudes of all modes.
 //! Every start adds its own sum; every block takes away what the slowest mode
-//! loses. While the bound is at or below the ceiling, no accumulator can wrap
+//! loses; where that is too coarse, the bound is taken from the state. While the bound is at or below the ceiling, no accumulator can wrap
 //! (`docs/fixed-point.md` gives the proof). A start that would break it is made
 //! weaker, and says so.
 
@@ -13,7 +13,7 @@ use crate::quantise::{Coefficients, Onset};
 
 /// A voice whose bound falls below this (Q31) is put at rest: half of the last
 /// place of a 24-bit converter.
-pub const SILENCE_Q31: u32 = 1 << 7;
+pub const SILENCE_Q31: u64 = 1 << 7;
 
 /// Whether a start fitted into the headroom that was left.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -36,7 +36,6 @@ pub struct Voice<const M: usize> {
     /// Bound of the sum of the amplitudes, Q31 with 32 more fractional bits.
     bound: u64,
     slowest_decay_q64: u64,
-    growth_q16: u32,
 }
 
 impl<const M: usize> Voice<M> {
@@ -49,7 +48,6 @@ impl<const M: usize> Voice<M> {
             ceiling: coefficients.ceiling,
             bound: 0,
             slowest_decay_q64: coefficients.slowest_decay_q64,
-            growth_q16: coefficients.growth_q16,
         }
     }
 
@@ -58,34 +56,34 @@ impl<const M: usize> Voice<M> {
     /// It sounds from the first frame of the next block. If the headroom that
     /// is left is too small, the start is made weaker: nothing ever wraps.
     pub fn superpose(&mut self, onset: &Onset<M>) -> Headroom {
-        let left = self.ceiling.saturating_sub(self.bound_q31());
-        let increments = onset.increments().iter();
-        if onset.level_q31() <= left {
-            self.bank.add(increments.copied(), &onset.groups);
-            self.bound += u64::from(onset.level_q31()) << 32;
+        let level = u64::from(onset.level_q31());
+        let ceiling = u64::from(self.ceiling);
+        if level + self.bound_q31() > ceiling {
+            // The running bound takes every mode for the slowest: look closer.
+            self.bound = self.bound.min(self.bank.level().min(ceiling) << 32);
+        }
+        let left = ceiling.saturating_sub(self.bound_q31());
+        if level <= left {
+            self.bank
+                .add(onset.increments().iter().copied(), onset.groups());
+            self.bound += level << 32;
             return Headroom::Full;
         }
-        // Less one unit a mode, which is what rounding can add to the increments.
-        let usable = left.saturating_sub(self.bank.modes() as u32);
-        let ratio = (u64::from(usable) << 15) / u64::from(onset.level_q31());
-        // usable < level, so the ratio is below 2^15.
-        let gain = Gain::from_q15(ratio as u16);
-        if gain == Gain::ZERO {
-            return Headroom::Limited(gain);
+        let gain = self.gain_into(left, level);
+        if gain > Gain::ZERO {
+            let weaker = onset.increments().iter().map(|one| one.scaled(gain));
+            self.bank.add(weaker, onset.groups());
+            self.bound += left << 32;
         }
-        self.bank
-            .add(increments.map(|one| one.scaled(gain)), &onset.groups);
-        self.bound += u64::from(left) << 32;
         Headroom::Limited(gain)
     }
 
     /// Exchanges the coefficients while the string sounds, without a click:
-    /// q and its last step stay. This is how a voice is muted and released
-    /// (the same string with other losses).
+    /// `q[n]` and `q[n] − q[n−1]` of every mode stay. This is how a voice is
+    /// muted and released (the same string with other losses).
     ///
-    /// An exchange can add to an amplitude (a moving string that is suddenly
-    /// damped has a sine part to lose); should the bound pass the ceiling by
-    /// that, the sound is made weaker. The gain that was applied is returned.
+    /// An exchange can add to an amplitude; should the sum pass the ceiling by
+    /// that, the sound is made weaker, and the gain is returned.
     ///
     /// # Errors
     /// A ceiling above the one the voice was made with; nothing is changed then.
@@ -99,24 +97,32 @@ impl<const M: usize> Voice<M> {
                 max: f64::from(self.share) / f64::from(FULL_SCALE_Q31),
             });
         }
-        self.bank
-            .retune(&coefficients.coefficients, &coefficients.groups);
-        // A' <= A (1 + |k - k'|/(2 r sin θ)), mode by mode.
-        let growth = self.growth_q16.max(coefficients.growth_q16);
-        let added = (self.bound >> 16).saturating_mul(u64::from(growth));
-        self.bound = self.bound.saturating_add(added);
         self.ceiling = coefficients.ceiling;
         self.slowest_decay_q64 = coefficients.slowest_decay_q64;
-        self.growth_q16 = coefficients.growth_q16;
-        if self.bound_q31() <= self.ceiling {
-            return Ok(Headroom::Full);
+        let ceiling = u64::from(self.ceiling);
+        let mut headroom = Headroom::Full;
+        if !self.is_silent() {
+            let level = self
+                .bank
+                .level_with(coefficients.as_slice(), coefficients.groups());
+            if level > ceiling {
+                let gain = self.gain_into(ceiling, level);
+                self.bank.scale(gain);
+                headroom = Headroom::Limited(gain);
+            }
+            self.bound = level.min(ceiling) << 32;
         }
-        let usable = self.ceiling.saturating_sub(self.bank.modes() as u32);
-        let ratio = (u64::from(usable) << 15) / u64::from(self.bound_q31());
-        let gain = Gain::from_q15(ratio as u16);
-        self.bank.scale(gain);
-        self.bound = u64::from(self.ceiling) << 32;
-        Ok(Headroom::Limited(gain))
+        self.bank
+            .retune(&coefficients.coefficients, &coefficients.groups);
+        Ok(headroom)
+    }
+
+    /// The largest gain that brings `level` down to `left`, less one unit a
+    /// mode, which is what rounding can add.
+    fn gain_into(&self, left: u64, level: u64) -> Gain {
+        let usable = left.saturating_sub(self.bank.modes() as u64);
+        // usable < level, so the ratio is below 2^15.
+        Gain::from_q15(((usable << 15) / level.max(1)) as u16)
     }
 
     /// Adds the next `B` frames to `block`; costs only a check when silent.
@@ -145,9 +151,8 @@ impl<const M: usize> Voice<M> {
 
     /// Upper bound of the sum of the amplitudes of all modes, Q31.
     #[must_use]
-    pub fn bound_q31(&self) -> u32 {
-        let rounded_up = self.bound.saturating_add(u64::from(u32::MAX)) >> 32;
-        rounded_up as u32
+    pub fn bound_q31(&self) -> u64 {
+        self.bound.saturating_add(u64::from(u32::MAX)) >> 32
     }
 
     /// Most that the bound can be, Q31.

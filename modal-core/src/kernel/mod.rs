@@ -2,36 +2,37 @@
 
 mod portable;
 
-use crate::bank::{Coefficient, State};
+use crate::bank::{Coefficient, FOLDED_SHIFT, Group, State};
 
 /// Which kernel this build uses; firmware prints it.
 pub const NAME: &str = "portable";
 
-/// Adds the next `B` frames of a group of modes of equal scale shift to `block`.
+/// Adds the next `B` frames (an even number) of one group of modes to `block`.
 ///
-/// Slices of different length: the shorter counts. A shift outside
-/// [`crate::bank::SHIFTS`] is taken as the nearest within.
+/// The modes are as many as the shorter slice has. A shift that is not in
+/// [`crate::bank::SHIFTS`] is taken as the next lower one.
 pub fn render<const B: usize>(
-    shift: i8,
+    group: Group,
     coefficients: &[Coefficient],
     states: &mut [State],
     block: &mut [i32; B],
 ) {
-    let run = match shift {
-        i8::MIN..=-3 => portable::render::<-3, B>,
-        -2 => portable::render::<-2, B>,
-        -1 => portable::render::<-1, B>,
-        0 => portable::render::<0, B>,
-        1 => portable::render::<1, B>,
-        2 => portable::render::<2, B>,
-        3 => portable::render::<3, B>,
-        4 => portable::render::<4, B>,
-        5 => portable::render::<5, B>,
-        6 => portable::render::<6, B>,
-        7 => portable::render::<7, B>,
-        8 => portable::render::<8, B>,
-        9 => portable::render::<9, B>,
-        10..=i8::MAX => portable::render::<10, B>,
+    const {
+        assert!(B.is_multiple_of(2), "folded modes need an even block");
+    }
+    let run = if group.folded {
+        portable::render::<{ FOLDED_SHIFT as i32 }, true, B>
+    } else {
+        match group.shift {
+            10..=i8::MAX => portable::render::<10, false, B>,
+            8..=9 => portable::render::<8, false, B>,
+            6..=7 => portable::render::<6, false, B>,
+            4..=5 => portable::render::<4, false, B>,
+            2..=3 => portable::render::<2, false, B>,
+            0..=1 => portable::render::<0, false, B>,
+            -1 => portable::render::<-1, false, B>,
+            i8::MIN..=-2 => portable::render::<-2, false, B>,
+        }
     };
     run(coefficients, states, block);
 }

@@ -4,7 +4,7 @@ use crate::bank::{Coefficient, State};
 
 /// Modes outside, frames inside, two modes at a time: coefficients and state
 /// stay in registers, and the block is loaded and stored once for two modes.
-pub(super) fn render<const SHIFT: i32, const B: usize>(
+pub(super) fn render<const SHIFT: i32, const FOLDED: bool, const B: usize>(
     coefficients: &[Coefficient],
     states: &mut [State],
     block: &mut [i32; B],
@@ -15,9 +15,7 @@ pub(super) fn render<const SHIFT: i32, const B: usize>(
         if let ([c0, c1], [s0, s1]) = (pair, state_pair) {
             let mut first = Running::<SHIFT>::load(c0, s0);
             let mut second = Running::<SHIFT>::load(c1, s1);
-            for frame in block.iter_mut() {
-                *frame = frame.wrapping_add(first.step()).wrapping_add(second.step());
-            }
+            hear::<FOLDED, B>(block, || first.step().wrapping_add(second.step()));
             first.store(s0);
             second.store(s1);
         }
@@ -25,10 +23,24 @@ pub(super) fn render<const SHIFT: i32, const B: usize>(
     let last = coefficients.remainder().first();
     if let (Some(coefficient), Some(state)) = (last, states.into_remainder().first_mut()) {
         let mut mode = Running::<SHIFT>::load(coefficient, state);
-        for frame in block.iter_mut() {
-            *frame = frame.wrapping_add(mode.step());
-        }
+        hear::<FOLDED, B>(block, || mode.step());
         mode.store(state);
+    }
+}
+
+/// Adds a frame of `next` to every frame of the block, with alternating sign
+/// for folded modes.
+#[inline(always)]
+fn hear<const FOLDED: bool, const B: usize>(block: &mut [i32; B], mut next: impl FnMut() -> i32) {
+    for pair in block.chunks_exact_mut(2) {
+        if let [even, odd] = pair {
+            *even = even.wrapping_add(next());
+            *odd = if FOLDED {
+                odd.wrapping_sub(next())
+            } else {
+                odd.wrapping_add(next())
+            };
+        }
     }
 }
 
@@ -61,7 +73,13 @@ impl<const SHIFT: i32> Running<SHIFT> {
             .velocity
             .wrapping_add(self.damping * (self.velocity >> 32))
             .wrapping_add(self.restoring * i64::from(now));
-        self.q = now.wrapping_add((self.velocity >> (32 + SHIFT)) as i32);
+        let high = (self.velocity >> 32) as i32;
+        let moved = if SHIFT >= 0 {
+            high >> SHIFT
+        } else {
+            high << -SHIFT
+        };
+        self.q = now.wrapping_add(moved);
         now
     }
 
