@@ -115,6 +115,18 @@ impl State {
     }
 }
 
+/// One mode in motion: what changes and what does not, side by side in memory
+/// as the kernels load them.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+#[repr(C)]
+pub struct Resonator {
+    /// What changes from sample to sample.
+    pub state: State,
+    /// What does not.
+    pub coefficient: Coefficient,
+}
+
 /// What a start adds to the state of one mode.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
@@ -175,49 +187,46 @@ impl Group {
     }
 }
 
-/// Up to `M` modes: coefficients in groups of equal shift, and their state.
+/// Up to `M` modes in groups of equal form.
 #[derive(Clone, Debug)]
 pub struct Bank<const M: usize> {
-    coefficients: Vec<Coefficient, M>,
+    resonators: Vec<Resonator, M>,
     groups: Vec<Group, MAX_GROUPS>,
-    states: Vec<State, M>,
 }
 
 impl<const M: usize> Bank<M> {
-    pub(crate) fn new(coefficients: Vec<Coefficient, M>, groups: Vec<Group, MAX_GROUPS>) -> Self {
+    /// A bank at rest.
+    pub(crate) fn new(coefficients: &[Coefficient], groups: &Vec<Group, MAX_GROUPS>) -> Self {
         let mut bank = Self {
-            coefficients,
-            groups,
-            states: Vec::new(),
+            resonators: Vec::new(),
+            groups: Vec::new(),
         };
-        bank.clear();
+        bank.retune(coefficients, groups);
         bank
     }
 
     /// Number of modes.
     #[must_use]
     pub fn modes(&self) -> usize {
-        self.coefficients.len()
+        self.resonators.len()
     }
 
-    /// The state of every mode, by rising frequency.
+    /// Every mode, by rising frequency.
     #[must_use]
-    pub fn states(&self) -> &[State] {
-        &self.states
+    pub fn resonators(&self) -> &[Resonator] {
+        &self.resonators
     }
 
-    /// The coefficients of every mode, by rising frequency.
+    /// The runs of modes of equal form, in the order of the modes.
     #[must_use]
-    pub fn coefficients(&self) -> &[Coefficient] {
-        &self.coefficients
+    pub fn groups(&self) -> &[Group] {
+        &self.groups
     }
 
     /// Puts every mode at rest.
     pub fn clear(&mut self) {
-        self.states.clear();
-        for form in forms(&self.groups) {
-            // As many states as coefficients, which fit.
-            let _ = self.states.push(State::rest(form.shift));
+        for (resonator, form) in self.resonators.iter_mut().zip(forms(&self.groups)) {
+            resonator.state = State::rest(form.shift);
         }
     }
 
@@ -225,7 +234,10 @@ impl<const M: usize> Bank<M> {
     /// mode: superposition.
     pub(crate) fn add(&mut self, increments: impl Iterator<Item = Increment>, made_for: &[Group]) {
         let both = forms(made_for).zip(forms(&self.groups));
-        for ((state, increment), (from, to)) in self.states.iter_mut().zip(increments).zip(both) {
+        for ((resonator, increment), (from, to)) in
+            self.resonators.iter_mut().zip(increments).zip(both)
+        {
+            let state = &mut resonator.state;
             let velocity = converted(increment.q, increment.velocity(), from, to);
             state.q = state.q.wrapping_add(increment.q);
             state.set_velocity(state.velocity().wrapping_add(velocity));
@@ -234,7 +246,8 @@ impl<const M: usize> Bank<M> {
 
     /// Makes every mode `gain` times as large.
     pub(crate) fn scale(&mut self, gain: Gain) {
-        for (state, form) in self.states.iter_mut().zip(forms(&self.groups)) {
+        for (resonator, form) in self.resonators.iter_mut().zip(forms(&self.groups)) {
+            let state = &mut resonator.state;
             let moving = gain.apply_wide(state.moving(form.shift));
             state.q = gain.apply(state.q);
             state.set_velocity(moving.wrapping_add(rest_velocity(form.shift)));
@@ -245,22 +258,25 @@ impl<const M: usize> Bank<M> {
     /// `q[n] − q[n−1]` of every mode stay, in whatever form the new groups hold
     /// them. Modes that the new set lacks are dropped, modes that it adds start
     /// at rest. [`Bank::level_with`] tells beforehand how loud that is.
-    pub(crate) fn retune(
-        &mut self,
-        coefficients: &Vec<Coefficient, M>,
-        groups: &Vec<Group, MAX_GROUPS>,
-    ) {
+    pub(crate) fn retune(&mut self, coefficients: &[Coefficient], groups: &Vec<Group, MAX_GROUPS>) {
         let both = forms(&self.groups).zip(forms(groups));
-        for (state, (from, to)) in self.states.iter_mut().zip(both) {
+        for ((resonator, &coefficient), (from, to)) in
+            self.resonators.iter_mut().zip(coefficients).zip(both)
+        {
+            let state = &mut resonator.state;
             let velocity = converted(state.q, state.moving(from.shift), from, to);
             state.set_velocity(velocity.wrapping_add(rest_velocity(to.shift)));
+            resonator.coefficient = coefficient;
         }
-        self.states.truncate(coefficients.len());
-        for form in forms(groups).skip(self.states.len()) {
-            // As many states as coefficients, which fit.
-            let _ = self.states.push(State::rest(form.shift));
+        self.resonators.truncate(coefficients.len());
+        let added = coefficients.iter().zip(forms(groups));
+        for (&coefficient, form) in added.skip(self.resonators.len()) {
+            // Coefficients are at most M, as prepared.
+            let _ = self.resonators.push(Resonator {
+                state: State::rest(form.shift),
+                coefficient,
+            });
         }
-        self.coefficients.clone_from(coefficients);
         self.groups.clone_from(groups);
     }
 
@@ -268,39 +284,45 @@ impl<const M: usize> Bank<M> {
     /// state itself.
     #[must_use]
     pub fn level(&self) -> u64 {
-        self.level_with(&self.coefficients, &self.groups)
+        self.resonators
+            .iter()
+            .zip(forms(&self.groups))
+            .map(|(resonator, form)| amplitude(&resonator.state, form, resonator.coefficient, form))
+            .fold(0, u64::saturating_add)
     }
 
     /// The same as if the modes went on with other coefficients.
     pub(crate) fn level_with(&self, coefficients: &[Coefficient], groups: &[Group]) -> u64 {
         let both = forms(&self.groups).zip(forms(groups));
-        self.states
+        self.resonators
             .iter()
             .zip(coefficients)
             .zip(both)
-            .map(|((state, coefficient), (from, to))| {
-                // 16 fractional bits: a velocity of 2·2^31 still fits twice.
-                let slow = Group { shift: -16, ..to };
-                let velocity = converted(state.q, state.moving(from.shift), from, slow);
-                coefficient.amplitude(to.shift, state.q, velocity)
+            .map(|((resonator, &coefficient), (from, to))| {
+                amplitude(&resonator.state, from, coefficient, to)
             })
             .fold(0, u64::saturating_add)
     }
 
     /// Adds the next `B` frames of every mode to `block` and moves the state on.
     pub fn render<const B: usize>(&mut self, block: &mut [i32; B]) {
-        let mut coefficients = self.coefficients.as_slice();
-        let mut states = self.states.as_mut_slice();
+        let mut resonators = self.resonators.as_mut_slice();
         for group in &self.groups {
-            let modes = usize::from(group.modes)
-                .min(coefficients.len())
-                .min(states.len());
-            let (now, later) = coefficients.split_at(modes);
-            let (now_states, later_states) = states.split_at_mut(modes);
-            kernel::render(*group, now, now_states, block);
-            (coefficients, states) = (later, later_states);
+            let modes = usize::from(group.modes).min(resonators.len());
+            let (now, later) = resonators.split_at_mut(modes);
+            kernel::render(*group, now, block);
+            resonators = later;
         }
     }
+}
+
+/// Upper bound of the amplitude (Q31) of a mode held in the form `from` that
+/// goes on with `coefficient` in the form `to`.
+fn amplitude(state: &State, from: Group, coefficient: Coefficient, to: Group) -> u64 {
+    // 16 fractional bits: a velocity of 2·2^31 still fits twice.
+    let slow = Group { shift: -16, ..to };
+    let velocity = converted(state.q, state.moving(from.shift), from, slow);
+    coefficient.amplitude(to.shift, state.q, velocity)
 }
 
 /// The accumulator of a mode at rest: half a step of q.

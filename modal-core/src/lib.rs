@@ -29,7 +29,7 @@
 //!
 //! // From here on: integers.
 //! let mut instrument = Instrument::<1, 48, 32>::new();
-//! instrument.add_voice(Voice::new(coefficients))?;
+//! instrument.add_voice(Voice::new(&coefficients))?;
 //! let mut dac = Converter::<TwosComplement16>::new(1);
 //! let (mut mix, mut words) = ([0_i32; 32], [0_u16; 32]);
 //! if let Some(voice) = instrument.voice_mut(0) {

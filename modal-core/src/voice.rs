@@ -41,9 +41,9 @@ pub struct Voice<const M: usize> {
 impl<const M: usize> Voice<M> {
     /// A string at rest.
     #[must_use]
-    pub fn new(coefficients: Coefficients<M>) -> Self {
+    pub fn new(coefficients: &Coefficients<M>) -> Self {
         Self {
-            bank: Bank::new(coefficients.coefficients, coefficients.groups),
+            bank: Bank::new(&coefficients.coefficients, &coefficients.groups),
             share: coefficients.ceiling,
             ceiling: coefficients.ceiling,
             bound: 0,

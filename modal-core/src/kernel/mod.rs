@@ -1,20 +1,33 @@
 //! The inner loop, behind one function.
 
+#[cfg(kernel = "armv7m")]
+mod armv7m;
 mod portable;
 
-use crate::bank::{Coefficient, FOLDED_SHIFT, Group, State};
+use crate::bank::{FOLDED_SHIFT, Group, Resonator};
 
 /// Which kernel this build uses; firmware prints it.
-pub const NAME: &str = "portable";
+pub const NAME: &str = if cfg!(kernel = "armv7m") {
+    "armv7m"
+} else {
+    "portable"
+};
 
 /// Adds the next `B` frames (an even number) of one group of modes to `block`.
 ///
-/// The modes are as many as the shorter slice has. A shift that is not in
-/// [`crate::bank::SHIFTS`] is taken as the next lower one.
-pub fn render<const B: usize>(
+/// A shift that is not in [`crate::bank::SHIFTS`] is taken as the next lower
+/// one. Every target computes the same bits.
+pub fn render<const B: usize>(group: Group, resonators: &mut [Resonator], block: &mut [i32; B]) {
+    #[cfg(kernel = "armv7m")]
+    let resonators = armv7m::render(group, resonators, block);
+    render_portable(group, resonators, block);
+}
+
+/// [`render`] by the portable kernel, whatever the target: the truth that the
+/// others are measured against.
+pub fn render_portable<const B: usize>(
     group: Group,
-    coefficients: &[Coefficient],
-    states: &mut [State],
+    resonators: &mut [Resonator],
     block: &mut [i32; B],
 ) {
     const {
@@ -34,5 +47,5 @@ pub fn render<const B: usize>(
             i8::MIN..=-2 => portable::render::<-2, false, B>,
         }
     };
-    run(coefficients, states, block);
+    run(resonators, block);
 }

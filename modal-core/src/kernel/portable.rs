@@ -1,30 +1,27 @@
 //! The kernel that every other one must equal bit for bit.
 
-use crate::bank::{Coefficient, State};
+use crate::bank::Resonator;
 
 /// Modes outside, frames inside, two modes at a time: coefficients and state
 /// stay in registers, and the block is loaded and stored once for two modes.
 pub(super) fn render<const SHIFT: i32, const FOLDED: bool, const B: usize>(
-    coefficients: &[Coefficient],
-    states: &mut [State],
+    resonators: &mut [Resonator],
     block: &mut [i32; B],
 ) {
-    let mut coefficients = coefficients.chunks_exact(2);
-    let mut states = states.chunks_exact_mut(2);
-    for (pair, state_pair) in coefficients.by_ref().zip(states.by_ref()) {
-        if let ([c0, c1], [s0, s1]) = (pair, state_pair) {
-            let mut first = Running::<SHIFT>::load(c0, s0);
-            let mut second = Running::<SHIFT>::load(c1, s1);
+    let mut pairs = resonators.chunks_exact_mut(2);
+    for pair in pairs.by_ref() {
+        if let [r0, r1] = pair {
+            let mut first = Running::<SHIFT>::load(r0);
+            let mut second = Running::<SHIFT>::load(r1);
             hear::<FOLDED, B>(block, || first.step().wrapping_add(second.step()));
-            first.store(s0);
-            second.store(s1);
+            first.store(r0);
+            second.store(r1);
         }
     }
-    let last = coefficients.remainder().first();
-    if let (Some(coefficient), Some(state)) = (last, states.into_remainder().first_mut()) {
-        let mut mode = Running::<SHIFT>::load(coefficient, state);
+    if let [last] = pairs.into_remainder() {
+        let mut mode = Running::<SHIFT>::load(last);
         hear::<FOLDED, B>(block, || mode.step());
-        mode.store(state);
+        mode.store(last);
     }
 }
 
@@ -54,12 +51,12 @@ struct Running<const SHIFT: i32> {
 
 impl<const SHIFT: i32> Running<SHIFT> {
     #[inline(always)]
-    fn load(coefficient: &Coefficient, state: &State) -> Self {
+    fn load(resonator: &Resonator) -> Self {
         Self {
-            damping: i64::from(coefficient.damping),
-            restoring: i64::from(coefficient.restoring),
-            q: state.q,
-            velocity: state.velocity(),
+            damping: i64::from(resonator.coefficient.damping),
+            restoring: i64::from(resonator.coefficient.restoring),
+            q: resonator.state.q,
+            velocity: resonator.state.velocity(),
         }
     }
 
@@ -84,8 +81,8 @@ impl<const SHIFT: i32> Running<SHIFT> {
     }
 
     #[inline(always)]
-    fn store(&self, state: &mut State) {
-        state.q = self.q;
-        state.set_velocity(self.velocity);
+    fn store(&self, resonator: &mut Resonator) {
+        resonator.state.q = self.q;
+        resonator.state.set_velocity(self.velocity);
     }
 }
