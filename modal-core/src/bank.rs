@@ -43,7 +43,7 @@ impl Coefficient {
     ///
     /// q[n] = A r^n cos(θ n − φ) has A² = q² + c², and from k and e alone
     /// c = ((1−k) v − q (e−k)/2) / s with s = r sin θ = √(e − ((e+k)/2)²).
-    fn amplitude(self, shift: i8, q: i32, velocity: i64) -> u64 {
+    pub(crate) fn amplitude(self, shift: i8, q: i32, velocity: i64) -> u64 {
         let damping_q31 = i64::from(self.damping.unsigned_abs()) >> 1;
         // At most 2 in Q62.
         let restoring_q62 = u64::from(self.restoring.unsigned_abs()) << (30 - shift);

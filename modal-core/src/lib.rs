@@ -55,6 +55,7 @@ pub mod series;
 pub mod string;
 
 pub mod fixed;
+pub mod note;
 pub mod quantise;
 
 pub mod bank;

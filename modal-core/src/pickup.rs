@@ -84,6 +84,18 @@ impl DisplacementPickup {
     pub fn new(place: f64, aperture_m: f64) -> Result<Self> {
         Aperture::new(place, aperture_m).map(Self)
     }
+
+    /// Place as a fraction of the length.
+    #[must_use]
+    pub fn place(&self) -> f64 {
+        self.0.place
+    }
+
+    /// Width in m over which it averages.
+    #[must_use]
+    pub fn aperture_m(&self) -> f64 {
+        self.0.width_m
+    }
 }
 
 impl Pickup for DisplacementPickup {
@@ -107,6 +119,18 @@ impl VelocityPickup {
     /// A value outside [`bounds::PLACE`] or [`bounds::WIDTH_M`].
     pub fn new(place: f64, aperture_m: f64) -> Result<Self> {
         Aperture::new(place, aperture_m).map(Self)
+    }
+
+    /// Place as a fraction of the length.
+    #[must_use]
+    pub fn place(&self) -> f64 {
+        self.0.place
+    }
+
+    /// Width in m over which it averages.
+    #[must_use]
+    pub fn aperture_m(&self) -> f64 {
+        self.0.width_m
     }
 }
 

@@ -33,6 +33,29 @@ pub const PLUCK_LEVEL: Bound = Bound {
 /// Most modes of one string: a group counts its modes in 16 bits.
 const MOST_MODES: usize = u16::MAX as usize;
 
+fn refused_level(value: f64, ceiling_q31: u32) -> Error {
+    Error::OutOfRange {
+        field: PLUCK_LEVEL.name,
+        unit: PLUCK_LEVEL.unit,
+        value,
+        min: PLUCK_LEVEL.min,
+        max: f64::from(ceiling_q31) / TWO_POW_31,
+    }
+}
+
+/// Refuses no modes and more than `capacity`.
+pub(crate) fn check_count(modes: u32, capacity: usize) -> Result<()> {
+    let capacity = capacity.min(MOST_MODES);
+    if modes == 0 || modes as usize > capacity {
+        return Err(Error::Count {
+            field: "modes",
+            wanted: modes,
+            capacity: capacity as u32,
+        });
+    }
+    Ok(())
+}
+
 /// The exact sampled form of one mode, as its state is held (see [`Group`]:
 /// a folded mode moves at π − θ).
 struct Sampled {
@@ -157,13 +180,7 @@ impl<const M: usize> Coefficients<M> {
     ) -> Result<Self> {
         bounds::SAMPLE_RATE_HZ.check(sample_rate_hz)?;
         bounds::CEILING.check(ceiling)?;
-        if modes == 0 || modes as usize > M.min(MOST_MODES) {
-            return Err(Error::Count {
-                field: "modes",
-                wanted: modes,
-                capacity: M.min(MOST_MODES) as u32,
-            });
-        }
+        check_count(modes, M)?;
         let limit_hz = HIGHEST_MODE_OF_SAMPLE_RATE * sample_rate_hz;
         let below = series.modes_below(limit_hz);
         if below == 0 {
@@ -223,21 +240,41 @@ impl<const M: usize> Coefficients<M> {
             }
         }
 
-        let reserve_share = reserve / TWO_POW_31;
-        if reserve_share > 0.5 * ceiling {
+        Self::from_integers(
+            coefficients,
+            groups,
+            (ceiling * f64::from(FULL_SCALE_Q31)) as u64,
+            // A cast saturates.
+            libm::ceil(reserve) as u64,
+            (slowest_decay * TWO_POW_32 * TWO_POW_32) as u64,
+            sample_rate_hz,
+        )
+    }
+
+    /// Takes the `reserve` for rounding (Q31) off the `ceiling`.
+    pub(crate) fn from_integers(
+        coefficients: Vec<Coefficient, M>,
+        groups: Vec<Group, MAX_GROUPS>,
+        ceiling: u64,
+        reserve: u64,
+        slowest_decay_q64: u64,
+        sample_rate_hz: f64,
+    ) -> Result<Self> {
+        if reserve > ceiling / 2 {
             return Err(Error::OutOfRange {
                 field: "reserve for the rounding of slow modes",
                 unit: "of full scale",
-                value: reserve_share,
+                value: reserve as f64 / TWO_POW_31,
                 min: 0.0,
-                max: 0.5 * ceiling,
+                max: ceiling as f64 / (2.0 * TWO_POW_31),
             });
         }
         Ok(Self {
             coefficients,
             groups,
-            ceiling: (ceiling * f64::from(FULL_SCALE_Q31) - libm::ceil(reserve)) as u32,
-            slowest_decay_q64: (slowest_decay * TWO_POW_32 * TWO_POW_32) as u64,
+            // At most full scale in Q31.
+            ceiling: (ceiling - reserve) as u32,
+            slowest_decay_q64,
             sample_rate_hz,
         })
     }
@@ -318,25 +355,31 @@ impl<const M: usize> Onset<M> {
                 libm::rint(velocity) as i64,
             ));
             // One unit more for the rounding of the increment itself.
-            level += libm::hypot(a, c) * TWO_POW_31 + 1.0;
+            let amplitude = libm::hypot(a, c);
+            if amplitude.is_nan() {
+                return Err(refused_level(amplitude, coefficients.ceiling));
+            }
+            level += amplitude * TWO_POW_31 + 1.0;
         }
-        let ceiling = f64::from(coefficients.ceiling);
-        // Written so that NaN is refused.
-        if level <= ceiling {
-            Ok(Self {
-                increments,
-                groups: coefficients.groups.clone(),
-                level: libm::ceil(level) as u32,
-            })
-        } else {
-            Err(Error::OutOfRange {
-                field: PLUCK_LEVEL.name,
-                unit: PLUCK_LEVEL.unit,
-                value: level / TWO_POW_31,
-                min: PLUCK_LEVEL.min,
-                max: ceiling / TWO_POW_31,
-            })
+        // A cast saturates.
+        Self::from_integers(increments, libm::ceil(level) as u64, coefficients)
+    }
+
+    /// Refuses a `level` (Q31) above the ceiling of `coefficients`.
+    pub(crate) fn from_integers(
+        increments: Vec<Increment, M>,
+        level: u64,
+        coefficients: &Coefficients<M>,
+    ) -> Result<Self> {
+        if level > u64::from(coefficients.ceiling) {
+            let share = level as f64 / TWO_POW_31;
+            return Err(refused_level(share, coefficients.ceiling));
         }
+        Ok(Self {
+            increments,
+            groups: coefficients.groups.clone(),
+            level: level as u32,
+        })
     }
 
     /// What is added to each mode, by rising frequency.

@@ -72,6 +72,24 @@ impl RoundedPluck {
             width_m: bounds::WIDTH_M.check(width_m)?,
         })
     }
+
+    /// Place as a fraction of the length.
+    #[must_use]
+    pub fn place(&self) -> f64 {
+        self.point.place
+    }
+
+    /// Height in m.
+    #[must_use]
+    pub fn height_m(&self) -> f64 {
+        self.point.height_m
+    }
+
+    /// Width of the tip in m.
+    #[must_use]
+    pub fn width_m(&self) -> f64 {
+        self.width_m
+    }
 }
 
 impl Excitation for RoundedPluck {
