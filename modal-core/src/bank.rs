@@ -13,8 +13,9 @@
 
 use heapless::Vec;
 
-use crate::fixed::Gain;
+use crate::fixed::{FULL_SCALE_Q31, Gain};
 use crate::kernel;
+use crate::quantise::{Coefficients, Onset};
 
 /// The scale shifts S that a group of modes can have, falling as the pitch
 /// rises. Every one is a kernel of its own, so there are no more than pay.
@@ -22,6 +23,10 @@ pub const SHIFTS: [i8; 8] = [10, 8, 6, 4, 2, 0, -1, -2];
 
 /// The scale shift of folded modes: the only one that holds e up to 2.
 pub const FOLDED_SHIFT: i8 = -2;
+
+/// A mode of no more than this amplitude (Q31) comes to rest: a quarter of the
+/// last place of a 24-bit converter, −150 dBFS.
+pub const INAUDIBLE_Q31: u64 = 1 << 6;
 
 /// Most groups in a bank: one a shift, and the folded one.
 pub const MAX_GROUPS: usize = SHIFTS.len() + 1;
@@ -187,30 +192,53 @@ impl Group {
     }
 }
 
+/// What a voice needs of a bank of up to `M` modes: the exact [`Bank`], or one
+/// made for a smaller core.
+pub trait ModeBank<const M: usize>: Sized {
+    /// Highest ceiling, Q31, that the bank can hold without wrapping.
+    const HIGHEST_CEILING_Q31: u32;
+
+    /// A bank at rest.
+    fn at_rest(coefficients: &Coefficients<M>) -> Self;
+
+    /// Number of modes.
+    fn modes(&self) -> usize;
+
+    /// Puts every mode exactly at rest.
+    fn clear(&mut self);
+
+    /// Whether every mode is exactly at rest, and rendering costs nothing.
+    fn is_at_rest(&self) -> bool;
+
+    /// Adds `gain` times a prepared start to the state: superposition.
+    fn add(&mut self, onset: &Onset<M>, gain: Gain);
+
+    /// Makes every mode `gain` times as large.
+    fn scale(&mut self, gain: Gain);
+
+    /// Exchanges the coefficients and keeps the sound: `q[n]` and
+    /// `q[n] − q[n−1]` of every mode stay. Modes that the new set lacks are
+    /// dropped, modes that it adds start at rest.
+    fn retune(&mut self, coefficients: &Coefficients<M>);
+
+    /// Upper bound of the sum of the amplitudes of all modes, Q31, from the
+    /// state itself, as if they went on with `coefficients` (`None`: their own).
+    fn level(&self, coefficients: Option<&Coefficients<M>>) -> u64;
+
+    /// Adds the next `B` frames of every mode to `block` and moves the state on.
+    fn render<const B: usize>(&mut self, block: &mut [i32; B]);
+}
+
 /// Up to `M` modes in groups of equal form.
 #[derive(Clone, Debug)]
 pub struct Bank<const M: usize> {
     resonators: Vec<Resonator, M>,
     groups: Vec<Group, MAX_GROUPS>,
+    /// Modes from here on are exactly at rest and are not computed.
+    sounding: usize,
 }
 
 impl<const M: usize> Bank<M> {
-    /// A bank at rest.
-    pub(crate) fn new(coefficients: &[Coefficient], groups: &Vec<Group, MAX_GROUPS>) -> Self {
-        let mut bank = Self {
-            resonators: Vec::new(),
-            groups: Vec::new(),
-        };
-        bank.retune(coefficients, groups);
-        bank
-    }
-
-    /// Number of modes.
-    #[must_use]
-    pub fn modes(&self) -> usize {
-        self.resonators.len()
-    }
-
     /// Every mode, by rising frequency.
     #[must_use]
     pub fn resonators(&self) -> &[Resonator] {
@@ -223,17 +251,44 @@ impl<const M: usize> Bank<M> {
         &self.groups
     }
 
-    /// Puts every mode at rest.
-    pub fn clear(&mut self) {
+    /// How many modes are computed: all up to the highest that still sounds.
+    #[must_use]
+    pub fn sounding(&self) -> usize {
+        self.sounding
+    }
+}
+
+impl<const M: usize> ModeBank<M> for Bank<M> {
+    const HIGHEST_CEILING_Q31: u32 = FULL_SCALE_Q31;
+
+    fn at_rest(coefficients: &Coefficients<M>) -> Self {
+        let mut bank = Self {
+            resonators: Vec::new(),
+            groups: Vec::new(),
+            sounding: 0,
+        };
+        bank.retune(coefficients);
+        bank
+    }
+
+    fn modes(&self) -> usize {
+        self.resonators.len()
+    }
+
+    fn clear(&mut self) {
         for (resonator, form) in self.resonators.iter_mut().zip(forms(&self.groups)) {
             resonator.state = State::rest(form.shift);
         }
+        self.sounding = 0;
     }
 
-    /// Adds `increments`, made for the groups `made_for`, to the state, mode by
-    /// mode: superposition.
-    pub(crate) fn add(&mut self, increments: impl Iterator<Item = Increment>, made_for: &[Group]) {
-        let both = forms(made_for).zip(forms(&self.groups));
+    fn is_at_rest(&self) -> bool {
+        self.sounding == 0
+    }
+
+    fn add(&mut self, onset: &Onset<M>, gain: Gain) {
+        let both = forms(onset.groups()).zip(forms(&self.groups));
+        let increments = onset.increments().iter().map(|one| one.scaled(gain));
         for ((resonator, increment), (from, to)) in
             self.resonators.iter_mut().zip(increments).zip(both)
         {
@@ -242,10 +297,10 @@ impl<const M: usize> Bank<M> {
             state.q = state.q.wrapping_add(increment.q);
             state.set_velocity(state.velocity().wrapping_add(velocity));
         }
+        self.sounding = self.resonators.len();
     }
 
-    /// Makes every mode `gain` times as large.
-    pub(crate) fn scale(&mut self, gain: Gain) {
+    fn scale(&mut self, gain: Gain) {
         for (resonator, form) in self.resonators.iter_mut().zip(forms(&self.groups)) {
             let state = &mut resonator.state;
             let moving = gain.apply_wide(state.moving(form.shift));
@@ -254,22 +309,19 @@ impl<const M: usize> Bank<M> {
         }
     }
 
-    /// Exchanges the coefficients and keeps the sound: `q[n]` and
-    /// `q[n] − q[n−1]` of every mode stay, in whatever form the new groups hold
-    /// them. Modes that the new set lacks are dropped, modes that it adds start
-    /// at rest. [`Bank::level_with`] tells beforehand how loud that is.
-    pub(crate) fn retune(&mut self, coefficients: &[Coefficient], groups: &Vec<Group, MAX_GROUPS>) {
+    fn retune(&mut self, coefficients: &Coefficients<M>) {
+        let new = coefficients.as_slice();
+        let groups = coefficients.groups();
         let both = forms(&self.groups).zip(forms(groups));
-        for ((resonator, &coefficient), (from, to)) in
-            self.resonators.iter_mut().zip(coefficients).zip(both)
+        for ((resonator, &coefficient), (from, to)) in self.resonators.iter_mut().zip(new).zip(both)
         {
             let state = &mut resonator.state;
             let velocity = converted(state.q, state.moving(from.shift), from, to);
             state.set_velocity(velocity.wrapping_add(rest_velocity(to.shift)));
             resonator.coefficient = coefficient;
         }
-        self.resonators.truncate(coefficients.len());
-        let added = coefficients.iter().zip(forms(groups));
+        self.resonators.truncate(new.len());
+        let added = new.iter().zip(forms(groups));
         for (&coefficient, form) in added.skip(self.resonators.len()) {
             // Coefficients are at most M, as prepared.
             let _ = self.resonators.push(Resonator {
@@ -277,43 +329,74 @@ impl<const M: usize> Bank<M> {
                 coefficient,
             });
         }
-        self.groups.clone_from(groups);
+        self.groups.clone_from(&coefficients.groups);
+        self.sounding = self.sounding.min(self.resonators.len());
     }
 
-    /// Upper bound of the sum of the amplitudes of all modes, Q31, from the
-    /// state itself.
-    #[must_use]
-    pub fn level(&self) -> u64 {
-        self.resonators
-            .iter()
-            .zip(forms(&self.groups))
-            .map(|(resonator, form)| amplitude(&resonator.state, form, resonator.coefficient, form))
-            .fold(0, u64::saturating_add)
-    }
-
-    /// The same as if the modes went on with other coefficients.
-    pub(crate) fn level_with(&self, coefficients: &[Coefficient], groups: &[Group]) -> u64 {
+    fn level(&self, coefficients: Option<&Coefficients<M>>) -> u64 {
+        let groups = coefficients.map_or(self.groups.as_slice(), Coefficients::groups);
+        let mut others = coefficients.map(|other| other.as_slice().iter());
         let both = forms(&self.groups).zip(forms(groups));
         self.resonators
             .iter()
-            .zip(coefficients)
             .zip(both)
-            .map(|((resonator, &coefficient), (from, to))| {
-                amplitude(&resonator.state, from, coefficient, to)
+            .map_while(|(resonator, (from, to))| {
+                let coefficient = match &mut others {
+                    Some(others) => *others.next()?,
+                    None => resonator.coefficient,
+                };
+                Some(amplitude(&resonator.state, from, coefficient, to))
             })
             .fold(0, u64::saturating_add)
     }
 
-    /// Adds the next `B` frames of every mode to `block` and moves the state on.
-    pub fn render<const B: usize>(&mut self, block: &mut [i32; B]) {
+    fn render<const B: usize>(&mut self, block: &mut [i32; B]) {
         let mut resonators = self.resonators.as_mut_slice();
+        let mut left = self.sounding;
         for group in &self.groups {
+            // Kernels work in pairs, so modes come to rest in pairs.
             let modes = usize::from(group.modes).min(resonators.len());
-            let (now, later) = resonators.split_at_mut(modes);
+            let sounding = modes.min(left.next_multiple_of(2));
+            let (all, later) = resonators.split_at_mut(modes);
+            let (now, _) = all.split_at_mut(sounding);
             kernel::render(*group, now, block);
+            if left <= modes {
+                self.sounding -= retired(now, *group);
+                return;
+            }
+            left -= modes;
             resonators = later;
         }
     }
+}
+
+/// Puts the last pair of `resonators` at rest if nobody could hear it, and
+/// tells how many modes that are.
+fn retired(resonators: &mut [Resonator], group: Group) -> usize {
+    let last = if resonators.len().is_multiple_of(2) {
+        2
+    } else {
+        1
+    };
+    let (_, pair) = resonators.split_at_mut(resonators.len().saturating_sub(last));
+    if pair.iter().all(|resonator| is_inaudible(resonator, group)) {
+        for resonator in pair.iter_mut() {
+            resonator.state = State::rest(group.shift);
+        }
+        pair.len()
+    } else {
+        0
+    }
+}
+
+/// Whether the amplitude is at most [`INAUDIBLE_Q31`].
+fn is_inaudible(resonator: &Resonator, group: Group) -> bool {
+    let state = &resonator.state;
+    // A quick look first: |v|·2^S is at most the amplitude.
+    let speed = (state.moving(group.shift) >> 32).unsigned_abs();
+    u64::from(state.q.unsigned_abs()) <= INAUDIBLE_Q31
+        && speed <= INAUDIBLE_Q31
+        && amplitude(state, group, resonator.coefficient, group) <= INAUDIBLE_Q31
 }
 
 /// Upper bound of the amplitude (Q31) of a mode held in the form `from` that

@@ -33,6 +33,9 @@ impl Gain {
     /// `value` times the gain, rounded to nearest.
     #[must_use]
     pub const fn apply(self, value: i32) -> i32 {
+        if self.0 == Self::UNITY.0 {
+            return value;
+        }
         // |value·gain| <= 2^46; the shifted result is no larger than `value`.
         ((value as i64 * self.0 as i64 + (1 << 14)) >> 15) as i32
     }
@@ -40,6 +43,9 @@ impl Gain {
     /// A 64-bit `value` times the gain, rounded towards minus infinity.
     #[must_use]
     pub const fn apply_wide(self, value: i64) -> i64 {
+        if self.0 == Self::UNITY.0 {
+            return value;
+        }
         // Split so that nothing overflows: value = high·2^15 + low.
         let (high, low) = (value >> 15, value & 0x7FFF);
         high * self.0 as i64 + ((low * self.0 as i64) >> 15)

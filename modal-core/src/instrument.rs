@@ -2,24 +2,28 @@
 
 use heapless::Vec;
 
+use crate::bank::{Bank, ModeBank};
 use crate::bounds;
 use crate::error::{Error, Result};
 use crate::fixed::FULL_SCALE_Q31;
 use crate::voice::Voice;
 
-/// Up to `S` strings of up to `M` modes, rendered `B` frames at a time.
+/// Up to `S` strings of up to `M` modes on banks `K`, rendered `B` frames at a
+/// time.
 #[derive(Clone, Debug)]
-pub struct Instrument<const S: usize, const M: usize, const B: usize> {
-    voices: Vec<Voice<M>, S>,
+pub struct Instrument<const S: usize, const M: usize, const B: usize, K = Bank<M>> {
+    voices: Vec<Voice<M, K>, S>,
 }
 
-impl<const S: usize, const M: usize, const B: usize> Default for Instrument<S, M, B> {
+impl<const S: usize, const M: usize, const B: usize, K: ModeBank<M>> Default
+    for Instrument<S, M, B, K>
+{
     fn default() -> Self {
         Self::new()
     }
 }
 
-impl<const S: usize, const M: usize, const B: usize> Instrument<S, M, B> {
+impl<const S: usize, const M: usize, const B: usize, K: ModeBank<M>> Instrument<S, M, B, K> {
     /// An instrument without strings.
     #[must_use]
     pub const fn new() -> Self {
@@ -31,7 +35,7 @@ impl<const S: usize, const M: usize, const B: usize> Instrument<S, M, B> {
     /// # Errors
     /// [`Error::Count`] if `S` strings are there already; a sum of all ceilings
     /// above digital full scale.
-    pub fn add_voice(&mut self, voice: Voice<M>) -> Result<usize> {
+    pub fn add_voice(&mut self, voice: Voice<M, K>) -> Result<usize> {
         let index = self.voices.len();
         let sum: u64 = self
             .voices
@@ -60,12 +64,12 @@ impl<const S: usize, const M: usize, const B: usize> Instrument<S, M, B> {
 
     /// The strings.
     #[must_use]
-    pub fn voices(&self) -> &[Voice<M>] {
+    pub fn voices(&self) -> &[Voice<M, K>] {
         &self.voices
     }
 
     /// The string with this index.
-    pub fn voice_mut(&mut self, index: usize) -> Option<&mut Voice<M>> {
+    pub fn voice_mut(&mut self, index: usize) -> Option<&mut Voice<M, K>> {
         self.voices.get_mut(index)
     }
 

@@ -66,7 +66,7 @@ pub mod voice;
 
 mod maths;
 
-pub use bank::Bank;
+pub use bank::{Bank, ModeBank};
 pub use dac::{Converter, DacFormat, TwosComplement16, Unipolar12};
 pub use error::{Error, Result};
 pub use excitation::{Excitation, ModalState, PointPluck, RoundedPluck};

@@ -6,7 +6,7 @@
 //! (`docs/fixed-point.md` gives the proof). A start that would break it is made
 //! weaker, and says so.
 
-use crate::bank::Bank;
+use crate::bank::{Bank, ModeBank};
 use crate::error::{Error, Result};
 use crate::fixed::{FULL_SCALE_Q31, Gain};
 use crate::quantise::{Coefficients, Onset};
@@ -26,10 +26,10 @@ pub enum Headroom {
     Limited(Gain),
 }
 
-/// One string being played.
+/// One string being played, on a bank `K` of up to `M` modes.
 #[derive(Clone, Debug)]
-pub struct Voice<const M: usize> {
-    bank: Bank<M>,
+pub struct Voice<const M: usize, K = Bank<M>> {
+    bank: K,
     /// Highest ceiling that later coefficients may have.
     share: u32,
     ceiling: u32,
@@ -39,11 +39,28 @@ pub struct Voice<const M: usize> {
 }
 
 impl<const M: usize> Voice<M> {
-    /// A string at rest.
+    /// A string at rest, on the exact bank.
     #[must_use]
     pub fn new(coefficients: &Coefficients<M>) -> Self {
+        Self::on(Bank::at_rest(coefficients), coefficients)
+    }
+}
+
+impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
+    /// A string at rest, on the bank `K`.
+    ///
+    /// # Errors
+    /// A ceiling above what the bank can hold.
+    pub fn with_bank(coefficients: &Coefficients<M>) -> Result<Self> {
+        if coefficients.ceiling > K::HIGHEST_CEILING_Q31 {
+            return Err(ceiling_error(coefficients.ceiling, K::HIGHEST_CEILING_Q31));
+        }
+        Ok(Self::on(K::at_rest(coefficients), coefficients))
+    }
+
+    fn on(bank: K, coefficients: &Coefficients<M>) -> Self {
         Self {
-            bank: Bank::new(&coefficients.coefficients, &coefficients.groups),
+            bank,
             share: coefficients.ceiling,
             ceiling: coefficients.ceiling,
             bound: 0,
@@ -60,19 +77,17 @@ impl<const M: usize> Voice<M> {
         let ceiling = u64::from(self.ceiling);
         if level + self.bound_q31() > ceiling {
             // The running bound takes every mode for the slowest: look closer.
-            self.bound = self.bound.min(self.bank.level().min(ceiling) << 32);
+            self.bound = self.bound.min(self.bank.level(None).min(ceiling) << 32);
         }
         let left = ceiling.saturating_sub(self.bound_q31());
         if level <= left {
-            self.bank
-                .add(onset.increments().iter().copied(), onset.groups());
+            self.bank.add(onset, Gain::UNITY);
             self.bound += level << 32;
             return Headroom::Full;
         }
         let gain = self.gain_into(left, level);
         if gain > Gain::ZERO {
-            let weaker = onset.increments().iter().map(|one| one.scaled(gain));
-            self.bank.add(weaker, onset.groups());
+            self.bank.add(onset, gain);
             self.bound += left << 32;
         }
         Headroom::Limited(gain)
@@ -89,22 +104,14 @@ impl<const M: usize> Voice<M> {
     /// A ceiling above the one the voice was made with; nothing is changed then.
     pub fn set_coefficients(&mut self, coefficients: &Coefficients<M>) -> Result<Headroom> {
         if coefficients.ceiling > self.share {
-            return Err(Error::OutOfRange {
-                field: "ceiling",
-                unit: "of full scale",
-                value: f64::from(coefficients.ceiling) / f64::from(FULL_SCALE_Q31),
-                min: 0.0,
-                max: f64::from(self.share) / f64::from(FULL_SCALE_Q31),
-            });
+            return Err(ceiling_error(coefficients.ceiling, self.share));
         }
         self.ceiling = coefficients.ceiling;
         self.slowest_decay_q64 = coefficients.slowest_decay_q64;
         let ceiling = u64::from(self.ceiling);
         let mut headroom = Headroom::Full;
         if !self.is_silent() {
-            let level = self
-                .bank
-                .level_with(coefficients.as_slice(), coefficients.groups());
+            let level = self.bank.level(Some(coefficients));
             if level > ceiling {
                 let gain = self.gain_into(ceiling, level);
                 self.bank.scale(gain);
@@ -112,8 +119,7 @@ impl<const M: usize> Voice<M> {
             }
             self.bound = level.min(ceiling) << 32;
         }
-        self.bank
-            .retune(&coefficients.coefficients, &coefficients.groups);
+        self.bank.retune(coefficients);
         Ok(headroom)
     }
 
@@ -132,7 +138,7 @@ impl<const M: usize> Voice<M> {
         }
         self.bank.render(block);
         self.bound -= mul_q64(self.bound, loss_of_block(self.slowest_decay_q64, B));
-        if self.bound_q31() <= SILENCE_Q31 {
+        if self.bank.is_at_rest() || self.bound_q31() <= SILENCE_Q31 {
             self.silence();
         }
     }
@@ -169,8 +175,19 @@ impl<const M: usize> Voice<M> {
 
     /// The modes.
     #[must_use]
-    pub fn bank(&self) -> &Bank<M> {
+    pub fn bank(&self) -> &K {
         &self.bank
+    }
+}
+
+fn ceiling_error(value_q31: u32, max_q31: u32) -> Error {
+    let share = |q31: u32| f64::from(q31) / f64::from(FULL_SCALE_Q31);
+    Error::OutOfRange {
+        field: "ceiling",
+        unit: "of full scale",
+        value: share(value_q31),
+        min: 0.0,
+        max: share(max_q31),
     }
 }
 
