@@ -44,6 +44,9 @@
 //! ```
 #![no_std]
 
+#[cfg(test)]
+extern crate std;
+
 pub mod bounds;
 pub mod error;
 
@@ -62,6 +65,7 @@ pub mod bank;
 pub mod dac;
 pub mod instrument;
 pub mod kernel;
+pub mod narrow;
 pub mod voice;
 
 mod maths;
@@ -73,6 +77,7 @@ pub use excitation::{Excitation, ModalState, PointPluck, RoundedPluck};
 pub use fixed::Gain;
 pub use instrument::Instrument;
 pub use loss::{ConstantT60, Loss, TwoT60};
+pub use narrow::NarrowBank;
 pub use pickup::{DisplacementPickup, Pickup, PickupWeights, VelocityPickup};
 pub use quantise::{Coefficients, Onset};
 pub use series::{Mode, ModeSeries};
