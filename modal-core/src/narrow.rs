@@ -162,15 +162,10 @@ impl NarrowMode {
 fn undamped(coefficient: Coefficient, shift: i8) -> Factor {
     let k = u64::from(coefficient.damping.unsigned_abs());
     let u = (k >> 1) + ((k * k) >> 35);
-    let squared = (u * u) >> 32;
+    let squared = u * u;
     let e = u64::from(coefficient.restoring.unsigned_abs());
-    let own = if shift >= 0 {
-        squared << shift
-    } else {
-        squared >> -shift
-    };
-    let e = e.saturating_sub(own);
-    let grown = e + ((e * (u + squared)) >> 32);
+    let e = e.saturating_sub(squared >> (32 - shift));
+    let grown = e + ((e * (u + (squared >> 32))) >> 32);
     Factor::new(
         grown.min(u64::from(u32::MAX)) as u32,
         (32 + i32::from(shift)) as u32,
