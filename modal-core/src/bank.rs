@@ -25,7 +25,8 @@ pub const SHIFTS: [i8; 8] = [10, 8, 6, 4, 2, 0, -1, -2];
 pub const FOLDED_SHIFT: i8 = -2;
 
 /// A mode of no more than this amplitude (Q31) comes to rest: a quarter of the
-/// last place of a 24-bit converter, −150 dBFS.
+/// last place of a 24-bit converter, −150 dBFS (up to −138 dBFS for modes held
+/// with negative shifts).
 pub const INAUDIBLE_Q31: u64 = 1 << 6;
 
 /// Most groups in a bank: one a shift, and the folded one.
@@ -389,14 +390,16 @@ fn retired(resonators: &mut [Resonator], group: Group) -> usize {
     }
 }
 
-/// Whether the amplitude is at most [`INAUDIBLE_Q31`].
+/// Whether the amplitude is at most [`INAUDIBLE_Q31`], or as many steps of q
+/// where these are coarser: its own rounding keeps a mode moving that far.
 fn is_inaudible(resonator: &Resonator, group: Group) -> bool {
     let state = &resonator.state;
+    let limit = INAUDIBLE_Q31 << (-group.shift).max(0);
     // A quick look first: |v|·2^S is at most the amplitude.
     let speed = (state.moving(group.shift) >> 32).unsigned_abs();
-    u64::from(state.q.unsigned_abs()) <= INAUDIBLE_Q31
-        && speed <= INAUDIBLE_Q31
-        && amplitude(state, group, resonator.coefficient, group) <= INAUDIBLE_Q31
+    u64::from(state.q.unsigned_abs()) <= limit
+        && speed <= limit
+        && amplitude(state, group, resonator.coefficient, group) <= limit
 }
 
 /// Upper bound of the amplitude (Q31) of a mode held in the form `from` that

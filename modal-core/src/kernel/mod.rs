@@ -20,7 +20,9 @@ pub const NAME: &str = if cfg!(kernel = "armv7m") {
 pub fn render<const B: usize>(group: Group, resonators: &mut [Resonator], block: &mut [i32; B]) {
     #[cfg(kernel = "armv7m")]
     let resonators = armv7m::render(group, resonators, block);
-    render_portable(group, resonators, block);
+    if !resonators.is_empty() {
+        render_portable(group, resonators, block);
+    }
 }
 
 /// [`render`] by the portable kernel, whatever the target: the truth that the
