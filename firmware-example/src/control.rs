@@ -194,18 +194,19 @@ impl<'a, const S: usize, const M: usize> Control<'a, S, M> {
     }
 }
 
-/// Steepness of [`pluck_gain`]. Our own choice, by feel.
-const VELOCITY_EXPONENT: f32 = 1.6;
+/// Span of pluck heights over all velocities. Our own choice, by feel.
+const VELOCITY_SPAN_DB: f32 = 30.0;
 
-/// Share of the hardest pluck for a MIDI velocity: (velocity/127)^1.6.
+/// ln 10 / 20: from decibels to the exponent of e.
+const NEPERS_PER_DB: f32 = core::f32::consts::LN_10 / 20.0;
+
+/// Share of the hardest pluck for a MIDI velocity: even steps in decibels, from
+/// −30 dB to unity, each within 0.05 dB.
 #[must_use]
 pub fn pluck_gain(velocity: u8) -> Gain {
     const HARDEST: u8 = 127;
-    if velocity >= HARDEST {
-        return Gain::UNITY;
-    }
-    let unity = f32::from(Gain::UNITY.q15());
-    let share = F32Ext::powf(f32::from(velocity) / f32::from(HARDEST), VELOCITY_EXPONENT);
-    // Casts saturate.
-    Gain::from_q15((unity * share) as u16)
+    let softer = f32::from(HARDEST.saturating_sub(velocity)) / f32::from(HARDEST);
+    let share = F32Ext::exp(-softer * VELOCITY_SPAN_DB * NEPERS_PER_DB);
+    // Casts saturate, and Gain takes more than unity as unity.
+    Gain::from_q15((f32::from(Gain::UNITY.q15()) * share) as u16)
 }

@@ -56,7 +56,7 @@ pub fn design() -> Result<Design<STRINGS, MODES>> {
             string(65, plain(349.2, 0.30e-3, STEEL)?, [3.2, 0.8], 0.31, 2.5e-3)?,
         ],
         sample_rate_hz: f64::from(SAMPLE_RATE_HZ),
-        hardest_plucks_at_once: 2.2,
+        hardest_plucks_at_once: 1.5,
     })
 }
 
