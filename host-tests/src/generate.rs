@@ -1,0 +1,1 @@
+//! Random inputs for the property tests, from the bounds of `modal-core`.

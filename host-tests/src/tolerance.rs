@@ -1,0 +1,11 @@
+//! Every tolerance of the tests, each with its reason.
+
+/// Error of the integer engine against f64, dBFS: 30 dB below the last place of
+/// a 16-bit converter, so that no listener can tell.
+pub const ENGINE_DBFS: f64 = -125.0;
+/// Pitch of a mode, cents: a hundredth of what trained ears tell apart.
+pub const PITCH_CENTS: f64 = 0.01;
+/// T60 of a mode, as a share.
+pub const T60: f64 = 1.0e-3;
+/// Excess of the converted words' error over an ideal dithered converter, dB.
+pub const CONVERTER_DB: f64 = 1.0;
