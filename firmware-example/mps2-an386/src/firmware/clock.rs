@@ -13,6 +13,9 @@ pub(crate) const SAMPLE_RATE_HZ: u32 = 48_000;
 const SHORT_PERIOD: u32 = TICKS_PER_SECOND / SAMPLE_RATE_HZ;
 const PERIODS: u32 = 6;
 const FIRST_PERIOD: u32 = SHORT_PERIOD + 1;
+
+/// A frame that starts later than this missed its deadline: a tenth of a period.
+pub(crate) const LATEST_START_TICKS: u32 = SHORT_PERIOD / 10;
 const _: () =
     assert!((SHORT_PERIOD * PERIODS + PERIODS - 1) * SAMPLE_RATE_HZ == TICKS_PER_SECOND * PERIODS);
 

@@ -4,14 +4,13 @@
 use super::clock::ticks;
 
 /// Instructions per tick, measured on a loop of known length.
-pub(crate) fn instructions_per_tick() -> u32 {
+pub(crate) fn instructions_per_tick() -> f32 {
     const ROUNDS: u32 = 100_000;
-    // Two instructions a round.
-    const INSTRUCTIONS: u32 = 2 * ROUNDS;
+    const INSTRUCTIONS_A_ROUND: u32 = 2;
     let start = ticks();
     cortex_m::asm::delay(ROUNDS);
     let taken = ticks().wrapping_sub(start).max(1);
-    (INSTRUCTIONS + taken / 2) / taken
+    (INSTRUCTIONS_A_ROUND * ROUNDS) as f32 / taken as f32
 }
 
 /// Ticks spent on something that is done again and again.

@@ -72,7 +72,9 @@ fn DUAL_TIMER() {
     static mut OWN: Option<Sampling> = None;
     let begin = clock::ticks();
     let Some(sampling) = OWN else {
-        *OWN = SAMPLING.take();
+        if !OVER.load(Relaxed) {
+            *OWN = SAMPLING.take();
+        }
         return;
     };
     if sampling.send_frame() {
@@ -134,7 +136,7 @@ fn main() -> ! {
     clock::start_ticks();
     let instructions_per_tick = load::instructions_per_tick();
     defmt::info!(
-        "{=str}: {=u32} instructions a tick of {=u32} Hz",
+        "{=str}: {=f32} instructions a tick of {=u32} Hz",
         modal_core::kernel::NAME,
         instructions_per_tick,
         clock::TICKS_PER_SECOND

@@ -19,7 +19,7 @@ pub(crate) struct Run<'a> {
     pub(crate) rendering: &'a Rendering,
     pub(crate) controlling: &'a Controlling<'a>,
     pub(crate) bytes_lost: u32,
-    pub(crate) instructions_per_tick: u32,
+    pub(crate) instructions_per_tick: f32,
     pub(crate) prepare_ticks: u32,
 }
 
@@ -66,7 +66,7 @@ impl Run<'_> {
         let drain = self.sampling.drain();
         let (port, placed) = (self.controlling.port(), self.controlling.placed());
         let spent = self.rendering.spent();
-        let instructions = self.instructions_per_tick as f32;
+        let instructions = self.instructions_per_tick;
         let frames_sent = SAMPLING_TICKS.load(Relaxed) as f32 / FRAMES as f32;
         let sampling = frames_sent * instructions;
         let rendering = |ticks_per_block: f32| ticks_per_block * instructions / BLOCK as f32;
@@ -102,8 +102,8 @@ midi_port_overflows={bytes_lost}
 midi_placed_bytes={placed_bytes}
 midi_placed_messages={placed_messages}
 midi_placed_garbage={placed_garbage}
-instructions_per_tick={per_tick}
-instructions_to_prepare={to_prepare}
+instructions_per_tick={instructions:.2}
+instructions_to_prepare={to_prepare:.0}
 instructions_per_frame_sampling={sampling:.1}
 instructions_per_frame_mean={mean:.1}
 instructions_per_frame_max={most:.1}
@@ -132,8 +132,7 @@ budget_instructions_per_frame={budget:.1}",
             placed_bytes = placed.bytes,
             placed_messages = placed.messages,
             placed_garbage = placed.garbage(),
-            per_tick = self.instructions_per_tick,
-            to_prepare = u64::from(self.prepare_ticks) * u64::from(self.instructions_per_tick),
+            to_prepare = self.prepare_ticks as f32 * instructions,
             mean = rendering(spent.mean()) + sampling,
             most = rendering(spent.most() as f32) + sampling,
         )

@@ -5,12 +5,8 @@ use firmware_example::dac::Dac;
 use firmware_example::demo::BLOCK;
 use firmware_example::pump::Drain;
 
-use super::clock::SampleClock;
+use super::clock::{LATEST_START_TICKS, SampleClock};
 use super::spi::{Captured, ChipSelect, LoopedBus};
-
-/// A frame that starts later than this missed its deadline: a tenth of a
-/// period of the sample clock.
-const LATEST_START_TICKS: u32 = 52;
 
 /// What the sample interrupt works with.
 pub(crate) struct Sampling {
