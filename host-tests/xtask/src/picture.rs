@@ -2,6 +2,7 @@
 //! lowest string moves.
 
 use std::f64::consts::PI;
+use std::ops::Range;
 use std::path::Path;
 
 use anyhow::{Result, anyhow};
@@ -60,8 +61,9 @@ fn drawn<T, E: std::fmt::Display>(result: std::result::Result<T, E>) -> Result<T
 fn chart<'a, 'b>(
     area: &'b Area<'a>,
     title: &str,
-    (x, x_name): (std::ops::Range<f64>, &str),
-    (y, y_name): (std::ops::Range<f64>, &str),
+    (x, x_name): (Range<f64>, &str),
+    (y, y_name): (Range<f64>, &str),
+    y_places: usize,
 ) -> Result<Chart<'a, 'b>> {
     let mut chart = drawn(
         ChartBuilder::on(area)
@@ -77,6 +79,8 @@ fn chart<'a, 'b>(
             .light_line_style(TRANSPARENT)
             .x_desc(x_name)
             .y_desc(y_name)
+            .y_labels(if y_places == 0 { 6 } else { 9 })
+            .y_label_formatter(&|value| format!("{value:.y_places$}"))
             .axis_desc_style(("sans-serif", 15))
             .label_style(("sans-serif", 14))
             .draw(),
@@ -95,6 +99,7 @@ fn waveform(area: &Area<'_>, scene: &Scene<'_>) -> Result<()> {
         "DAC words as captured on the wire",
         (0.0..seconds, "time in s"),
         (-1.1 * peak..1.1 * peak, "of full scale"),
+        2,
     )?;
     // The extremes of each column of the picture.
     let column = scene.signal.len().div_ceil(1_100);
@@ -118,7 +123,8 @@ fn time_line(area: &Area<'_>, scene: &Scene<'_>) -> Result<()> {
         area,
         "Played: plucks (bars, as high as they are strong) and mutes (crosses)",
         (0.0..seconds, "time in s"),
-        (0.5..demo::STRINGS as f64 + 0.6, "string"),
+        (0.0..demo::STRINGS as f64 + 1.0, "string"),
+        0,
     )?;
     let at = |event: &Applied| f64::from(event.frame) / scene.sample_rate_hz;
     let line = |event: &Applied| f64::from(event.string) + 1.0;
@@ -178,6 +184,7 @@ fn spectrum_of_chord(area: &Area<'_>, scene: &Scene<'_>) -> Result<()> {
         &title,
         (0.0..12.0, "frequency in kHz"),
         (-150.0..0.0, "dB of full scale"),
+        0,
     )?;
     drawn(chart.draw_series(LineSeries::new(points, WAVE)))?;
     Ok(())
@@ -219,6 +226,7 @@ fn string_shapes(area: &Area<'_>) -> Result<()> {
         "The lowest string after its hardest pluck, from the same modes",
         (0.0..100.0 * spec.length_m(), "place in cm"),
         (-top..top, "displacement in mm"),
+        1,
     )?;
     for (index, color) in SHAPES.into_iter().enumerate() {
         let at = period * index as f64 / 8.0;
@@ -242,7 +250,7 @@ fn string_shapes(area: &Area<'_>) -> Result<()> {
     drawn(
         chart
             .configure_series_labels()
-            .position(SeriesLabelPosition::UpperRight)
+            .position(SeriesLabelPosition::LowerLeft)
             .background_style(WHITE.mix(0.85))
             .label_font(("sans-serif", 14))
             .draw(),
