@@ -99,13 +99,18 @@ impl<'a> Controlling<'a> {
             self.control.gesture(gesture);
         }
         self.control.poll();
-        if let Some(applied) = self.applied.dequeue() {
-            self.log_lost += u32::from(self.log.push(applied).is_err());
-        }
+        self.keep_log();
         if frame.wrapping_sub(self.metered_frame) >= METER_FRAMES {
             self.metered_frame = frame;
             let level_dbfs = self.meter.read(PEAK.swap(0, Relaxed));
             self.loudest_dbfs = self.loudest_dbfs.max(level_dbfs);
+        }
+    }
+
+    /// Keeps what took effect since the last time.
+    pub(crate) fn keep_log(&mut self) {
+        while let Some(applied) = self.applied.dequeue() {
+            self.log_lost += u32::from(self.log.push(applied).is_err());
         }
     }
 

@@ -25,7 +25,6 @@ use firmware_example::pump::{BlockQueue, pump};
 use heapless::Vec;
 use heapless::spsc::{Producer, Queue};
 use modal_core::{DacFormat, TwosComplement16};
-
 use semihosting::process::exit;
 
 use controlling::{Controlling, LOG};
@@ -184,9 +183,7 @@ fn main() -> ! {
         defmt::error!("an interrupt kept what it worked with");
         exit(FAILURE)
     };
-    for _ in 0..LOG_QUEUE {
-        controlling.turn();
-    }
+    controlling.keep_log();
     let run = Run {
         sampling: &sampling,
         rendering: &rendering,
