@@ -1,11 +1,22 @@
-//! The project's commands: `cargo xtask play`, `cargo xtask test`, …
+//! The project's commands: `cargo xtask play`, `cargo xtask test`.
+//!
+//! A command is a file of its own. What commands share: [`setup`] (what the
+//! machine needs), [`steps`] (running programs), [`emulator`] (the firmware and
+//! what it leaves).
 
-mod bars;
-mod emulator;
-mod picture;
-mod play;
 mod setup;
 mod steps;
+
+mod emulator;
+
+mod bars;
+mod figures;
+mod picture;
+mod play;
+mod tones;
+
+mod hygiene;
+mod snapshot;
 mod test;
 
 use std::path::PathBuf;
@@ -13,7 +24,7 @@ use std::process::ExitCode;
 
 use clap::{Parser, Subcommand};
 
-/// Commands of the modal string project.
+/// Plays the demonstration and checks the project.
 #[derive(Parser)]
 #[command(name = "cargo xtask", bin_name = "cargo xtask")]
 struct Arguments {
@@ -23,24 +34,40 @@ struct Arguments {
 
 #[derive(Subcommand)]
 enum Command {
-    /// Run the firmware in the emulator, listen to its DAC words, and compare
-    /// them with the closed form of the strings.
+    /// Play the demonstration on the emulated board and measure its DAC words.
+    ///
+    /// Builds the firmware, runs it in QEMU, compares every word that went over
+    /// the wire with the closed form of the strings, and leaves a sound file and
+    /// a picture. Ends with an error if a bar is missed. What is missing on this
+    /// machine is installed, or named.
     Play {
-        /// Write the measured figures to this file.
+        /// Write the figures to this file.
         #[arg(long, value_name = "FILE")]
         json: Option<PathBuf>,
-        /// Put the sound, the picture and the captured words here.
-        #[arg(long, value_name = "DIR", default_value = "target/play")]
-        out: PathBuf,
+        /// Put the sound, the picture and the captured words here [default:
+        /// target/play in the workspace].
+        #[arg(long, value_name = "DIR")]
+        out: Option<PathBuf>,
+        /// Take this run as the expected one of `cargo xtask test`.
+        #[arg(long)]
+        accept: bool,
     },
-    /// Check everything: style, docs, host tests, cross-builds, the emulator.
-    Test,
+    /// Check everything: format, lints, documentation, tests, cross-builds, the
+    /// emulated board.
+    Test {
+        /// Only the steps whose names contain this.
+        #[arg(value_name = "PART OF A NAME")]
+        only: Option<String>,
+    },
 }
 
 fn main() -> ExitCode {
     let done = match Arguments::parse().command {
-        Command::Play { json, out } => play::run(&out, json.as_deref()),
-        Command::Test => test::run(),
+        Command::Play { json, out, accept } => {
+            let out = out.unwrap_or_else(play::default_directory);
+            play::run(&out, json.as_deref(), accept)
+        }
+        Command::Test { only } => test::run(only.as_deref().unwrap_or_default()),
     };
     match done {
         Ok(true) => ExitCode::SUCCESS,

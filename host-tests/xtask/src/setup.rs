@@ -1,15 +1,16 @@
 //! Makes sure that what a command needs is there.
 
+use std::path::Path;
 use std::process::{Command, Stdio};
 
 use anyhow::{Context, Result, bail};
 
-use crate::steps::root;
+use crate::steps::{progress, root};
 
 /// The emulated board's target.
 pub(crate) const BOARD_TARGET: &str = "thumbv7em-none-eabihf";
 
-/// Every target that the core must build for.
+/// Every target that the core and the player must build for.
 pub(crate) const TARGETS: [&str; 5] = [
     "thumbv6m-none-eabi",
     "thumbv7m-none-eabi",
@@ -18,82 +19,99 @@ pub(crate) const TARGETS: [&str; 5] = [
     "riscv32imac-unknown-none-elf",
 ];
 
+/// A program, and the Debian package that it comes in.
+pub(crate) struct Program {
+    pub(crate) name: &'static str,
+    pub(crate) package: &'static str,
+}
+
+/// The emulator of the board.
+pub(crate) const EMULATOR: Program = Program {
+    name: "qemu-system-arm",
+    package: "qemu-system-arm",
+};
+
 /// Adds the `targets` that the toolchain lacks, through rustup.
 pub(crate) fn targets(targets: &[&str]) -> Result<()> {
-    let installed = Command::new("rustup")
-        .args(["target", "list", "--installed"])
+    let sysroot = Command::new("rustc")
+        .args(["--print", "sysroot"])
         .current_dir(root())
-        .output();
-    let Ok(installed) = installed else {
-        // A toolchain without rustup has its targets or the build says so.
-        return Ok(());
-    };
-    let installed = String::from_utf8_lossy(&installed.stdout).into_owned();
+        .output()
+        .context("cannot start rustc")?;
+    let sysroot = String::from_utf8(sysroot.stdout)?;
+    let libraries = Path::new(sysroot.trim()).join("lib/rustlib");
     let missing: Vec<&str> = targets
         .iter()
         .copied()
-        .filter(|target| !installed.lines().any(|line| line.trim() == *target))
+        .filter(|target| !libraries.join(target).is_dir())
         .collect();
     if missing.is_empty() {
         return Ok(());
     }
-    println!("Adding Rust targets: {}", missing.join(", "));
-    let status = Command::new("rustup")
+    let names = missing.join(" ");
+    let bar = progress(&format!("Adding to the Rust toolchain: {names}"));
+    let output = Command::new("rustup")
         .args(["target", "add"])
         .args(&missing)
         .current_dir(root())
-        .status()?;
-    if !status.success() {
-        bail!("`rustup target add {}` failed", missing.join(" "));
+        .stdin(Stdio::null())
+        .output();
+    bar.finish_and_clear();
+    match output {
+        Ok(output) if output.status.success() => Ok(()),
+        Ok(output) => bail!(
+            "`rustup target add {names}` failed: {}",
+            String::from_utf8_lossy(&output.stderr).trim()
+        ),
+        Err(_) => bail!(
+            "the Rust toolchain lacks {names}, and there is no rustup to add it: \
+             install the standard library of these targets"
+        ),
     }
-    Ok(())
 }
 
-/// Makes sure that `program` runs, from the Debian package `package` if it must
-/// be installed and may be.
-pub(crate) fn program(program: &str, package: &str) -> Result<()> {
-    if runs(program) {
+/// Makes sure that `program` is there: installs its package where this user may
+/// (root on Debian and its relatives), else says what to install.
+pub(crate) fn program(program: &Program) -> Result<()> {
+    let Program { name, package } = program;
+    if runs(name) {
         return Ok(());
     }
     let by_hand = format!(
-        "`{program}` is needed and was not found; install it (Debian and Ubuntu: `sudo apt-get \
-         install --no-install-recommends {package}`) and run the command again"
+        "{name} is needed and was not found. Install it, then try again.\n  \
+         Debian, Ubuntu: sudo apt-get install --no-install-recommends {package}\n  \
+         elsewhere: the package of your system that holds {name}"
     );
     if !(is_root() && runs("apt-get")) {
         bail!(by_hand);
     }
-    println!("Installing {package}");
+    let bar = progress(&format!("Installing {package}"));
     for arguments in [
         vec!["update", "-qq"],
-        // Without recommended packages: they are many, and not needed.
+        // Recommended packages are many, not needed, and not always there.
         vec!["install", "-y", "-qq", "--no-install-recommends", package],
     ] {
-        let status = Command::new("apt-get")
+        let output = Command::new("apt-get")
             .args(&arguments)
             .env("DEBIAN_FRONTEND", "noninteractive")
             .stdin(Stdio::null())
-            .stdout(Stdio::null())
-            .status()
+            .output()
             .with_context(|| by_hand.clone())?;
-        if !status.success() {
-            bail!("`apt-get {}` failed; {by_hand}", arguments.join(" "));
+        if !output.status.success() {
+            eprint!("{}", String::from_utf8_lossy(&output.stderr));
+            bail!("`apt-get {}` failed.\n{by_hand}", arguments.join(" "));
         }
     }
-    if runs(program) {
-        Ok(())
-    } else {
-        bail!(by_hand)
-    }
+    bar.finish_and_clear();
+    if runs(name) { Ok(()) } else { bail!(by_hand) }
 }
 
 fn runs(program: &str) -> bool {
     Command::new(program)
         .arg("--version")
         .stdin(Stdio::null())
-        .stdout(Stdio::null())
-        .stderr(Stdio::null())
-        .status()
-        .is_ok_and(|status| status.success())
+        .output()
+        .is_ok_and(|output| output.status.success())
 }
 
 fn is_root() -> bool {

@@ -1,187 +1,164 @@
 //! `cargo xtask test`: everything that must hold before a change goes in.
 
-use std::collections::BTreeMap;
-use std::fs;
 use std::process::Command;
 use std::time::{Duration, Instant};
 
-use anyhow::{Context, Result, bail};
+use anyhow::{Context, Result, bail, ensure};
+use console::style;
 
-use crate::play;
 use crate::setup::{self, BOARD_TARGET, TARGETS};
-use crate::steps::{cargo, root};
+use crate::steps::cargo;
+use crate::{hygiene, play};
 
-/// Files that may hold unsafe code, each with its argument.
-const UNSAFE_FILES: [&str; 2] = [
-    // The inner loop by hand.
-    "modal-core/src/kernel/armv7m.rs",
-    // Addresses of the emulated board's registers.
-    "firmware-example/mps2-an386/src/firmware/registers.rs",
-];
+/// A step and its name.
+struct Step {
+    name: String,
+    work: Box<dyn Fn() -> Result<()>>,
+}
 
-/// Runs the command; whether every step passed.
-pub(crate) fn run() -> Result<bool> {
+/// A step that was done.
+struct Done {
+    name: String,
+    time: Duration,
+    passed: bool,
+}
+
+/// Does the steps whose names contain `only`; whether all of them passed.
+pub(crate) fn run(only: &str) -> Result<bool> {
+    let mut steps = steps();
+    steps.retain(|step| step.name.contains(only));
+    ensure!(!steps.is_empty(), "no step has {only:?} in its name");
     setup::targets(&TARGETS)?;
-    let mut steps = Steps::default();
-    steps.command("format", &mut cargo(&["fmt", "--all", "--check"]));
-    steps.command(
-        "lints on the host",
-        &mut cargo(&["clippy", "--all-targets", "--", "-D", "warnings"]),
-    );
-    steps.command(
-        "lints on the board",
-        &mut cargo(&[
-            "clippy",
-            "--release",
-            "-p",
-            "mps2-an386",
-            "--target",
-            BOARD_TARGET,
-            "--",
-            "-D",
-            "warnings",
-        ]),
-    );
-    steps.command(
-        "documentation",
-        cargo(&["doc", "--no-deps", "--workspace", "--exclude", "mps2-an386"])
-            .env("RUSTDOCFLAGS", "-D warnings"),
-    );
-    steps.command(
-        "tests",
-        &mut cargo(&["test", "--profile", "release-checked"]),
-    );
-    for target in TARGETS {
-        steps.command(
-            &format!("build for {target}"),
-            &mut cargo(&[
-                "build",
+    let count = steps.len();
+    let done: Vec<Done> = (1..)
+        .zip(steps)
+        .map(|(number, step)| {
+            println!("\n[{number}/{count}] {}", style(&step.name).bold());
+            step.run()
+        })
+        .collect();
+    Ok(summary(&done))
+}
+
+fn steps() -> Vec<Step> {
+    let mut steps = vec![
+        Step::cargo("format", &["fmt", "--all", "--check"]),
+        Step::new("files", hygiene::check),
+        Step::cargo(
+            "lints, host",
+            &["clippy", "--quiet", "--all-targets", "--", "-Dwarnings"],
+        ),
+        Step::cargo(
+            "lints, board",
+            &[
+                "clippy",
+                "--quiet",
                 "--release",
+                "--package",
+                "mps2-an386",
+                "--target",
+                BOARD_TARGET,
+                "--",
+                "-Dwarnings",
+            ],
+        ),
+        Step::new("documentation", || {
+            let mut doc = cargo(&["doc", "--quiet", "--no-deps"]);
+            succeed(doc.env("RUSTDOCFLAGS", "-Dwarnings"))
+        }),
+        Step::cargo(
+            "tests, host",
+            &[
+                "test",
+                "--profile",
+                "release-checked",
+                "--package",
+                "modal-core",
+                "--package",
+                "firmware-example",
+                "--package",
+                "host-tests",
+            ],
+        ),
+        Step::cargo("tests, commands", &["test", "--package", "xtask"]),
+    ];
+    steps.extend(TARGETS.map(|target| {
+        Step::cargo(
+            &format!("build, {target}"),
+            &[
+                "build",
+                "--quiet",
+                "--release",
+                "--package",
+                "modal-core",
+                "--package",
+                "firmware-example",
                 "--target",
                 target,
-                "-p",
-                "modal-core",
-                "-p",
-                "firmware-example",
-            ]),
-        );
-    }
-    steps.check("unsafe only where it is argued", unsafe_files);
-    steps.check("no machine's paths", machine_paths);
-    steps.check("the performance in the emulator", || {
-        if play::run(&root().join("target/play"), None)? {
-            Ok(())
-        } else {
-            bail!("a bar was missed")
+            ],
+        )
+    }));
+    steps.push(Step::new("emulated board", || {
+        ensure!(play::test()?, "a bar is missed");
+        Ok(())
+    }));
+    steps
+}
+
+impl Step {
+    fn new(name: &str, work: impl Fn() -> Result<()> + 'static) -> Self {
+        Self {
+            name: name.to_owned(),
+            work: Box::new(work),
         }
-    });
-    Ok(steps.summary())
-}
-
-/// Steps that were done, and how they ended.
-#[derive(Default)]
-struct Steps {
-    done: Vec<(String, Duration, bool)>,
-}
-
-impl Steps {
-    fn command(&mut self, name: &str, command: &mut Command) {
-        self.check(name, || {
-            let status = command.status().context("cannot start it")?;
-            if status.success() {
-                Ok(())
-            } else {
-                bail!("{status}")
-            }
-        });
     }
 
-    fn check(&mut self, name: &str, check: impl FnOnce() -> Result<()>) {
-        println!("\n== {name}");
+    fn cargo(name: &str, arguments: &[&'static str]) -> Self {
+        let arguments = arguments.to_vec();
+        Self::new(name, move || succeed(&mut cargo(&arguments)))
+    }
+
+    fn run(self) -> Done {
         let start = Instant::now();
-        let result = check();
+        let result = (self.work)();
         if let Err(error) = &result {
-            println!("FAILED {name}: {error:#}");
+            println!("{} {}: {error:#}", style("failed").red().bold(), self.name);
         }
-        self.done
-            .push((name.to_owned(), start.elapsed(), result.is_ok()));
-    }
-
-    fn summary(&self) -> bool {
-        println!();
-        for (name, time, passed) in &self.done {
-            let word = if *passed { "passed" } else { "FAILED" };
-            println!("{word}  {:6.1} s  {name}", time.as_secs_f64());
+        Done {
+            name: self.name,
+            time: start.elapsed(),
+            passed: result.is_ok(),
         }
-        let failed = self.done.iter().filter(|(_, _, passed)| !passed).count();
-        println!(
-            "\nsteps: {} passed, {failed} failed",
-            self.done.len() - failed
-        );
-        failed == 0
     }
 }
 
-/// The text of every file that git tracks and that is text.
-fn tracked() -> Result<BTreeMap<String, String>> {
-    let output = Command::new("git")
-        .args(["ls-files", "-z"])
-        .current_dir(root())
-        .output()
-        .context("cannot start git")?;
-    let names = String::from_utf8(output.stdout)?;
-    Ok(names
-        .split_terminator('\0')
-        .filter_map(|name| Some((name.to_owned(), fs::read_to_string(root().join(name)).ok()?)))
-        .collect())
-}
-
-fn unsafe_files() -> Result<()> {
-    let word = ["un", "safe"].concat();
-    let used = |line: &str| {
-        let code = line.split("//").next().unwrap_or_default();
-        [" {", " fn", " impl", " extern", "("]
-            .iter()
-            .any(|after| code.contains(&format!("{word}{after}")))
-            || code.contains(&format!("allow({word}_code)"))
-    };
-    let offenders: Vec<String> = tracked()?
-        .into_iter()
-        .filter(|(name, _)| name.ends_with(".rs") && !UNSAFE_FILES.contains(&name.as_str()))
-        .filter(|(_, text)| text.lines().any(used))
-        .map(|(name, _)| name)
-        .collect();
-    if offenders.is_empty() {
-        Ok(())
-    } else {
-        bail!("{}", offenders.join(", "))
+/// Runs a command that shows its own output.
+fn succeed(command: &mut Command) -> Result<()> {
+    let status = command.status().context("cannot start it")?;
+    if !status.success() {
+        let arguments: Vec<_> = command
+            .get_args()
+            .map(|one| one.to_string_lossy())
+            .collect();
+        bail!("`cargo {}` ended with {status}", arguments.join(" "));
     }
+    Ok(())
 }
 
-fn machine_paths() -> Result<()> {
-    let roots: Vec<String> = ["home", "root", "work", "tmp", "Users"]
-        .iter()
-        .map(|folder| format!("/{folder}/"))
-        .collect();
-    let offenders: Vec<String> = tracked()?
-        .into_iter()
-        .filter(|(_, text)| {
-            text.lines()
-                .any(|line| roots.iter().any(|root| starts_a_path(line, root)))
-        })
-        .map(|(name, _)| name)
-        .collect();
-    if offenders.is_empty() {
-        Ok(())
-    } else {
-        bail!("{}", offenders.join(", "))
+/// Prints how every step ended; whether all of them passed.
+fn summary(done: &[Done]) -> bool {
+    println!();
+    for Done { name, time, passed } in done {
+        let word = if *passed {
+            style("passed").green()
+        } else {
+            style("failed").red().bold()
+        };
+        println!("{word}  {:7.1} s  {name}", time.as_secs_f64());
     }
-}
-
-/// Whether `root` stands in `line` as the beginning of a path.
-fn starts_a_path(line: &str, root: &str) -> bool {
-    line.match_indices(root).any(|(at, _)| {
-        let before = line[..at].chars().next_back();
-        before.is_none_or(|before| !before.is_alphanumeric() && !".-_/".contains(before))
-    })
+    let total: Duration = done.iter().map(|step| step.time).sum();
+    println!("        {:7.1} s  together", total.as_secs_f64());
+    let failed = done.iter().filter(|step| !step.passed).count();
+    println!("\n{} passed, {failed} failed", done.len() - failed);
+    failed == 0
 }
