@@ -43,7 +43,7 @@ impl<'a, F: DacFormat, const S: usize, const M: usize, const B: usize> Player<'a
     /// A player of `strings` at rest, which fades in and dithers from `seed`.
     ///
     /// # Errors
-    /// As [`Voice::set_coefficients`] and [`Instrument::add_voice`].
+    /// As [`Instrument::add_voice`].
     pub fn new(
         strings: &[PreparedString<M>],
         commands: Consumer<'a, Command<M>>,
@@ -51,11 +51,7 @@ impl<'a, F: DacFormat, const S: usize, const M: usize, const B: usize> Player<'a
     ) -> Result<Self> {
         let mut instrument = Instrument::new();
         for string in strings {
-            // The muted string needs less reserve for rounding, so it has the
-            // higher ceiling of the two: the share of the voice.
-            let mut voice = Voice::new(&string.muted);
-            let _ = voice.set_coefficients(&string.ringing)?;
-            instrument.add_voice(voice)?;
+            instrument.add_voice(Voice::new(&string.ringing))?;
         }
         Ok(Self {
             commands,

@@ -58,6 +58,41 @@ impl Gain {
     }
 }
 
+/// Leading 32 bits of `value` (0 only for 0), rounded down, and the even number
+/// of places they stand above their value in the lower half.
+const fn leading(value: u64) -> (u32, u32) {
+    let zeros = value.leading_zeros() & 62;
+    ((value.wrapping_shl(zeros) >> 32) as u32, zeros)
+}
+
+/// Square root, from 0 to 2^−15 of itself too small: 32-bit steps only.
+pub(crate) const fn root_below(value: u64) -> u64 {
+    let (leading, zeros) = leading(value);
+    ((leading.isqrt() as u64) << 16) >> (zeros / 2)
+}
+
+/// Square root, from 0 to 2^−14 of itself (and two units) too large.
+pub(crate) const fn root_above(value: u64) -> u64 {
+    let (leading, zeros) = leading(value);
+    (((leading.isqrt() as u64 + 1) << 16) >> (zeros / 2)) + 1
+}
+
+/// `dividend / divisor`, from 0 to 2^−13 of itself (and one unit) too large;
+/// a divisor of 0 is taken as 1.
+pub(crate) const fn quotient_above(dividend: u64, divisor: u64) -> u64 {
+    let divisor = if divisor == 0 { 1 } else { divisor };
+    let above = 64 - dividend.leading_zeros();
+    let dividend_shift = above.saturating_sub(31);
+    let divisor_shift = (64 - divisor.leading_zeros()).saturating_sub(16);
+    let quotient =
+        ((dividend >> dividend_shift) as u32 + 1) / (divisor >> divisor_shift) as u32 + 1;
+    if dividend_shift >= divisor_shift {
+        (quotient as u64) << (dividend_shift - divisor_shift)
+    } else {
+        ((quotient as u64) >> (divisor_shift - dividend_shift)) + 1
+    }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

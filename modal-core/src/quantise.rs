@@ -149,7 +149,10 @@ fn scale(shift: i8) -> f64 {
 pub struct Coefficients<const M: usize> {
     pub(crate) coefficients: Vec<Coefficient, M>,
     pub(crate) groups: Vec<Group, MAX_GROUPS>,
-    /// Most that the amplitudes of all modes may sum to, Q31, rounding reserved.
+    /// The stated share of digital full scale, Q31.
+    pub(crate) share: u32,
+    /// Most that the amplitudes of all modes may sum to, Q31: the share less the
+    /// reserve for rounding.
     pub(crate) ceiling: u32,
     /// 1 − r of the mode that decays slowest, Q64, rounded down.
     pub(crate) slowest_decay_q64: u64,
@@ -273,6 +276,7 @@ impl<const M: usize> Coefficients<M> {
             coefficients,
             groups,
             // At most full scale in Q31.
+            share: ceiling as u32,
             ceiling: (ceiling - reserve) as u32,
             slowest_decay_q64,
             sample_rate_hz,
@@ -297,7 +301,14 @@ impl<const M: usize> Coefficients<M> {
         &self.groups
     }
 
-    /// Most that the amplitudes of all modes may sum to, Q31.
+    /// The share of digital full scale that was stated, Q31.
+    #[must_use]
+    pub fn share_q31(&self) -> u32 {
+        self.share
+    }
+
+    /// Most that the amplitudes of all modes may sum to, Q31: the share less the
+    /// reserve for rounding.
     #[must_use]
     pub fn ceiling_q31(&self) -> u32 {
         self.ceiling

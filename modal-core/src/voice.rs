@@ -52,8 +52,8 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
     /// # Errors
     /// A ceiling above what the bank can hold.
     pub fn with_bank(coefficients: &Coefficients<M>) -> Result<Self> {
-        if coefficients.ceiling > K::HIGHEST_CEILING_Q31 {
-            return Err(ceiling_error(coefficients.ceiling, K::HIGHEST_CEILING_Q31));
+        if coefficients.share > K::HIGHEST_CEILING_Q31 {
+            return Err(ceiling_error(coefficients.share, K::HIGHEST_CEILING_Q31));
         }
         Ok(Self::on(K::at_rest(coefficients), coefficients))
     }
@@ -61,7 +61,7 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
     fn on(bank: K, coefficients: &Coefficients<M>) -> Self {
         Self {
             bank,
-            share: coefficients.ceiling,
+            share: coefficients.share,
             ceiling: coefficients.ceiling,
             bound: 0,
             slowest_decay_q64: coefficients.slowest_decay_q64,
@@ -103,8 +103,8 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
     /// # Errors
     /// A ceiling above the one the voice was made with; nothing is changed then.
     pub fn set_coefficients(&mut self, coefficients: &Coefficients<M>) -> Result<Headroom> {
-        if coefficients.ceiling > self.share {
-            return Err(ceiling_error(coefficients.ceiling, self.share));
+        if coefficients.share > self.share {
+            return Err(ceiling_error(coefficients.share, self.share));
         }
         self.ceiling = coefficients.ceiling;
         self.slowest_decay_q64 = coefficients.slowest_decay_q64;

@@ -7,9 +7,9 @@ use crate::bounds::{self, Bound};
 use crate::error::Result;
 use crate::excitation::RoundedPluck;
 use crate::fixed::Gain;
+use crate::note::ModeQ;
 use crate::note::polynomial::{mul_high, slack};
 use crate::note::sine::{Place, Sines};
-use crate::note::{ModeQ, NoteSpec};
 use crate::pickup::{DisplacementPickup, VelocityPickup};
 use crate::string::StringSpec;
 
@@ -158,7 +158,7 @@ impl PluckSpec {
         Self { strength, ..self }
     }
 
-    pub(super) fn start(&self, spec: &NoteSpec) -> Start {
+    pub(super) fn start(&self, angle_q56: u64) -> Start {
         Start {
             place: self.place.sines(),
             pickup: self.pickup_place.sines(),
@@ -166,7 +166,7 @@ impl PluckSpec {
             aperture: Width::new(self.aperture_q32),
             heard: self.heard,
             strength: self.strength,
-            first: Normalised::new(spec.angle_q60),
+            first: Normalised::new(angle_q56),
         }
     }
 }
@@ -189,102 +189,123 @@ pub(super) struct Start {
 
 impl Start {
     /// The increment of the next mode and a bound of its amplitude, Q31.
-    #[inline]
+    #[inline(always)]
     pub(super) fn next(&mut self, mode: &ModeQ, coefficient: Coefficient) -> (Increment, u64) {
         // sin · sin in Q31, narrowed by the widths.
-        let mut both =
-            ((i64::from(self.place.step()) * i64::from(self.pickup.step())) >> 29) as i32;
+        let product = i64::from(self.place.step()) * i64::from(self.pickup.step());
+        let mut both = (product >> 29).min(i64::from(i32::MAX)) as i32;
         for width in [&mut self.tip, &mut self.aperture].into_iter().flatten() {
             both = width.apply(both, mode.n);
         }
-        let shift = mode.form.shift;
-        let loss_q32 = (mode.loss_q40 >> 8) as u32;
-        let slack_q31 = slack(mode.z);
         let Strength { mantissa, places } = self.strength;
         match self.heard {
             Heard::Displacement => {
-                let ratio = self.first.over(mode.squared_q60);
-                let shape = (i64::from(both) * i64::from(ratio)) >> 32;
-                let a = (shape * i64::from(mantissa)) >> places;
-                // v = a (F/2 − u + s j)/(1 − u), with −u + s j written as
-                // (s − u) − s (1 − j); folding turns the sine over.
-                let slip = ((mode.decay_q40 >> 4) * u64::from(slack_q31)) >> 27;
-                let second_order = (mode.decay_q40 - mode.loss_q40) as i64;
-                let rest = if mode.form.folded {
-                    slip as i64 - (mode.decay_q40 + mode.loss_q40) as i64
-                } else {
-                    second_order - slip as i64
-                };
-                let rest = if shift >= 7 {
-                    rest << (shift - 7)
-                } else {
-                    rest >> (7 - shift)
-                };
-                let step = i64::from(mode.pull / 2) + rest;
-                let step = step + ((step * i64::from(grown(loss_q32))) >> 32);
-                let level = a.unsigned_abs();
-                // Too strong a pluck is refused by its level, not by this clamp.
-                let a = a.clamp(i64::from(i32::MIN), i64::from(i32::MAX));
-                let increment = Increment::new(a as i32, (a * step) >> 1);
-                // c = s a/θ, and s < θ/4 at least: √(1 + 1/16) is below 33/32.
-                let quadrature = level >> if mode.gentle { 13 } else { 5 };
-                (increment, level + quadrature + 2)
+                let ratio = self.first.over(mode.squared, mode.places);
+                let shape = ((i64::from(both) * i64::from(ratio)) >> 32) as i32;
+                let a = (i64::from(shape) * i64::from(mantissa)) >> places;
+                displaced(mode, a)
             }
             Heard::Velocity => {
-                // v = s_n j/(1 − u), Q47.
-                let step_q47 = (i64::from(both) * i64::from(mantissa)) >> (places - 16);
-                let v = step_q47 - (((step_q47 >> 16) * i64::from(slack_q31)) >> 15);
-                let v = v + (((v >> 16) * i64::from(grown(loss_q32))) >> 16);
-                let v = if mode.form.folded { -v } else { v };
-                let amplitude = coefficient.amplitude(shift, 0, v);
-                (Increment::new(0, v << (16 + shift)), amplitude)
+                // Q47.
+                let step = (i64::from(both) * i64::from(mantissa)) >> (places - 16);
+                struck(mode, coefficient, step)
             }
         }
     }
 }
 
-/// 1/(1 − u) − 1 in Q32, for u up to 1/16.
-#[inline]
-fn grown(loss_q32: u32) -> u32 {
-    let squared = mul_high(loss_q32, loss_q32);
-    let mut sum = loss_q32 + squared;
-    if loss_q32 > 1 << 22 {
-        let cubed = mul_high(squared, loss_q32);
-        let fourth = mul_high(squared, squared);
-        sum += cubed + fourth + mul_high(cubed, squared) + mul_high(cubed, cubed);
-    }
-    sum
+/// The increment of a mode that starts from rest at `a` (Q31), and a bound of
+/// its amplitude.
+#[inline(always)]
+fn displaced(mode: &ModeQ, a: i64) -> (Increment, u64) {
+    let shift = mode.form.shift;
+    let decay = &mode.decay;
+    // v = a (F/2 − u + s j)/(1 − u), with −u + s j written as
+    // (s − u) − s (1 − j); folding turns the sine over.
+    let slip = ((decay.s_q40 >> 4) * u64::from(slack(mode.z))) >> 27;
+    let rest = if mode.form.folded {
+        slip as i64 - (decay.s_q40 + decay.loss_q40) as i64
+    } else {
+        (decay.s_q40 - decay.loss_q40) as i64 - slip as i64
+    };
+    // Q40 to Q(33+S).
+    let rest = ((rest << 3) >> (10 - shift)) as i32;
+    let step = (mode.pull / 2) as i32 + rest;
+    let step = step + ((i64::from(step) * i64::from(grown(decay.loss_q32()))) >> 32) as i32;
+    let level = a.unsigned_abs();
+    // Too strong a pluck is refused by its level, not by this clamp.
+    let a = a.clamp(i64::from(i32::MIN), i64::from(i32::MAX)) as i32;
+    let increment = Increment::new(a, (i64::from(a) * i64::from(step)) >> 1);
+    // c = s a/θ; s < θ/4 was checked, and √(1 + 1/16) is below 33/32. Where
+    // s < θ/64, √(1 + 2^−12) is below 1 + 2^−13.
+    let gentle = decay.squared_q56 >> 32 < u64::from(mode.z) >> 17;
+    let quadrature = level >> if gentle { 13 } else { 5 };
+    (increment, level + quadrature + 2)
 }
 
-/// A number as 32 bits, the highest of them set, and where they stood.
+/// The increment of a mode that starts from zero with `step` per frame (Q47),
+/// and a bound of its amplitude.
+#[inline(always)]
+fn struck(mode: &ModeQ, coefficient: Coefficient, step: i64) -> (Increment, u64) {
+    // v = step j/(1 − u).
+    let v = step - (((step >> 16) * i64::from(slack(mode.z))) >> 15);
+    let v = v + (((v >> 16) * i64::from(grown(mode.decay.loss_q32()))) >> 16);
+    let v = if mode.form.folded { -v } else { v };
+    let amplitude = coefficient.amplitude(mode.form.shift, 0, v);
+    (Increment::new(0, v << (16 + mode.form.shift)), amplitude)
+}
+
+/// 1/(1 − u) − 1 in Q32, for u below 0.3.
+#[inline(always)]
+fn grown(loss_q32: u32) -> u32 {
+    if loss_q32 < 1 << 22 {
+        loss_q32 + mul_high(loss_q32, loss_q32)
+    } else {
+        let kept = (1_u64 << 32) - u64::from(loss_q32);
+        ((u64::from(loss_q32) << 32) / kept) as u32
+    }
+}
+
+/// A number as 32 bits, the highest of them set.
 #[derive(Clone, Copy)]
 struct Normalised {
     bits: u32,
-    zeros: u32,
+    /// Its value is `bits` / 2^`places`.
+    places: u32,
 }
 
 impl Normalised {
-    #[inline]
+    /// A value in Q56.
     fn new(value: u64) -> Self {
         let value = value.max(1);
         let zeros = value.leading_zeros();
         Self {
             bits: ((value << zeros) >> 32) as u32,
-            zeros,
+            places: 24 + zeros,
         }
     }
 
-    /// This over `larger`, Q32, saturating just below 1; off by less than 2^−28.
-    #[inline]
-    fn over(self, larger: u64) -> u32 {
-        let divisor = Self::new(larger);
+    /// This over the larger `bits` / 2^`places`, Q32, saturating just below 1.
+    #[inline(always)]
+    fn over(self, bits: u32, places: u32) -> u32 {
+        let bits = bits.max(1);
+        let zeros = bits.leading_zeros();
+        let divisor = bits << zeros;
         // 2^48/x to 15 bits by division, then one step of Newton's method.
-        let rough = u32::MAX / (divisor.bits >> 16);
-        let product = (u64::from(divisor.bits) * u64::from(rough)) >> 16;
-        let inverse = (u64::from(rough) * ((1 << 33) - product)) >> 17;
-        let quotient = u64::from(self.bits) * inverse.min(u64::from(u32::MAX));
-        let places = 31 + self.zeros.saturating_sub(divisor.zeros);
-        u32::try_from(quotient >> places.min(63)).unwrap_or(u32::MAX)
+        let rough = u32::MAX / (divisor >> 16);
+        // The product is 2^32 but for what the division cut off.
+        let product = ((u64::from(divisor) * u64::from(rough)) >> 16) as u32;
+        let missing = product.wrapping_neg().cast_signed();
+        let correction = (i64::from(rough) * i64::from(missing)) >> 17;
+        // 2^63/divisor.
+        let inverse = (i64::from(rough) << 15) + correction;
+        let inverse = u32::try_from(inverse).unwrap_or(u32::MAX);
+        // self/divisor in Q32 is bits·inverse/2^63 · 2^(32 + places' − places).
+        let quotient = mul_high(self.bits, inverse);
+        match self.places.checked_sub(places + zeros + 1) {
+            Some(down) => quotient.checked_shr(down).unwrap_or(0),
+            None => quotient.saturating_mul(2),
+        }
     }
 }
 
