@@ -176,6 +176,7 @@ impl Increment {
 /// begins with an even frame.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+#[repr(C)]
 pub struct Group {
     /// The scale shift S, within [`SHIFTS`].
     pub shift: i8,
@@ -236,6 +237,9 @@ pub struct Bank<const M: usize> {
     groups: Vec<Group, MAX_GROUPS>,
     /// Modes from here on are exactly at rest and are not computed.
     sounding: usize,
+    /// The group of the last sounding mode, and where it begins.
+    last_group: usize,
+    last_start: usize,
 }
 
 impl<const M: usize> Bank<M> {
@@ -256,6 +260,44 @@ impl<const M: usize> Bank<M> {
     pub fn sounding(&self) -> usize {
         self.sounding
     }
+
+    /// Computes every mode from now on.
+    fn wake(&mut self) {
+        self.sounding = self.resonators.len();
+        self.last_group = self.groups.len().saturating_sub(1);
+        let last = self.groups.last().map_or(0, |group| group.modes);
+        self.last_start = self.sounding.saturating_sub(usize::from(last));
+    }
+
+    /// Puts the last pair of sounding modes at rest if nobody could hear it.
+    fn retire(&mut self) {
+        let Some(&group) = self.groups.get(self.last_group) else {
+            return;
+        };
+        // Kernels work in pairs, so modes come to rest in pairs.
+        let last = if (self.sounding - self.last_start).is_multiple_of(2) {
+            2
+        } else {
+            1
+        };
+        let from = self.sounding.saturating_sub(last);
+        let pair = self.resonators.get_mut(from..self.sounding);
+        let pair = pair.unwrap_or_default();
+        if pair.iter().all(|resonator| is_inaudible(resonator, group)) {
+            for resonator in pair {
+                resonator.state = State::rest(group.shift);
+            }
+            self.sounding = from;
+            if self.sounding <= self.last_start {
+                self.last_group = self.last_group.saturating_sub(1);
+                let modes = self
+                    .groups
+                    .get(self.last_group)
+                    .map_or(0, |group| group.modes);
+                self.last_start = self.last_start.saturating_sub(usize::from(modes));
+            }
+        }
+    }
 }
 
 impl<const M: usize> ModeBank<M> for Bank<M> {
@@ -266,6 +308,8 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
             resonators: Vec::new(),
             groups: Vec::new(),
             sounding: 0,
+            last_group: 0,
+            last_start: 0,
         };
         bank.retune(coefficients);
         bank
@@ -297,7 +341,7 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
             state.q = state.q.wrapping_add(increment.q);
             state.set_velocity(state.velocity().wrapping_add(velocity));
         }
-        self.sounding = self.resonators.len();
+        self.wake();
     }
 
     fn scale(&mut self, gain: Gain) {
@@ -330,7 +374,9 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
             });
         }
         self.groups.clone_from(&coefficients.groups);
-        self.sounding = self.sounding.min(self.resonators.len());
+        if self.sounding > 0 {
+            self.wake();
+        }
     }
 
     fn level(&self, coefficients: Option<&Coefficients<M>>) -> u64 {
@@ -352,41 +398,9 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
     }
 
     fn render<const B: usize>(&mut self, block: &mut [i32; B]) {
-        let mut resonators = self.resonators.as_mut_slice();
-        let mut left = self.sounding;
-        for group in &self.groups {
-            // Kernels work in pairs, so modes come to rest in pairs.
-            let modes = usize::from(group.modes).min(resonators.len());
-            let sounding = modes.min(left.next_multiple_of(2));
-            let (all, later) = resonators.split_at_mut(modes);
-            let (now, _) = all.split_at_mut(sounding);
-            kernel::render(*group, now, block);
-            if left <= modes {
-                self.sounding -= retired(now, *group);
-                return;
-            }
-            left -= modes;
-            resonators = later;
-        }
-    }
-}
-
-/// Puts the last pair of `resonators` at rest if nobody could hear it, and
-/// tells how many modes that are.
-fn retired(resonators: &mut [Resonator], group: Group) -> usize {
-    let last = if resonators.len().is_multiple_of(2) {
-        2
-    } else {
-        1
-    };
-    let (_, pair) = resonators.split_at_mut(resonators.len().saturating_sub(last));
-    if pair.iter().all(|resonator| is_inaudible(resonator, group)) {
-        for resonator in pair.iter_mut() {
-            resonator.state = State::rest(group.shift);
-        }
-        pair.len()
-    } else {
-        0
+        let (sounding, _) = self.resonators.split_at_mut(self.sounding);
+        kernel::render(&self.groups, sounding, block);
+        self.retire();
     }
 }
 

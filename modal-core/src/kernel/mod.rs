@@ -13,19 +13,30 @@ pub const NAME: &str = if cfg!(kernel = "armv7m") {
     "portable"
 };
 
-/// Adds the next `B` frames (an even number) of one group of modes to `block`.
+/// Adds the next `B` frames (an even number) of all `resonators` to `block`.
 ///
-/// A shift that is not in [`crate::bank::SHIFTS`] is taken as the next lower
-/// one. Every target computes the same bits.
-pub fn render<const B: usize>(group: Group, resonators: &mut [Resonator], block: &mut [i32; B]) {
+/// `groups` tell their forms, one group after the other; resonators beyond the
+/// groups are not rendered. A shift that is not in [`crate::bank::SHIFTS`] is
+/// taken as the next lower one. Every target computes the same bits.
+pub fn render<const B: usize>(
+    groups: &[Group],
+    resonators: &mut [Resonator],
+    block: &mut [i32; B],
+) {
     #[cfg(kernel = "armv7m")]
-    let resonators = armv7m::render(group, resonators, block);
-    if !resonators.is_empty() {
-        render_portable(group, resonators, block);
+    if armv7m::render(groups, resonators, block) {
+        return;
+    }
+    let mut left = resonators;
+    for group in groups {
+        let modes = usize::from(group.modes).min(left.len());
+        let (now, later) = left.split_at_mut(modes);
+        render_portable(*group, now, block);
+        left = later;
     }
 }
 
-/// [`render`] by the portable kernel, whatever the target: the truth that the
+/// One group by the portable kernel, whatever the target: the truth that the
 /// others are measured against.
 pub fn render_portable<const B: usize>(
     group: Group,
