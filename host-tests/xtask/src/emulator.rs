@@ -93,7 +93,7 @@ pub(crate) fn run(directory: &Path) -> Result<Run> {
         }
     }
     let log = directory.join(LOG);
-    let emulator = emulator(&firmware, &directory)?;
+    let emulator = emulator(&firmware, &directory);
     finish(emulator, File::create(&log)?, TIME_LIMIT).with_context(|| {
         format!(
             "the emulated board failed; its log is {} (`defmt-print -e {}` reads it)",
@@ -118,25 +118,19 @@ fn build() -> Result<PathBuf> {
 }
 
 /// The emulator with `firmware`, whose files go into `directory`.
-fn emulator(firmware: &Path, directory: &Path) -> Result<Command> {
-    let directory = directory
-        .to_str()
-        .context("the emulator needs a directory whose name is Unicode")?
-        // The emulator's own way to write a comma within an option.
-        .replace(',', ",,");
+fn emulator(firmware: &Path, directory: &Path) -> Command {
     let mut command = Command::new(EMULATOR.name);
     command
         .args(["-M", BOARD, "-display", "none", "-monitor", "none"])
         .args(["-serial", "null"])
         // An instruction is 2^3 ns: 125 million a second, whatever the host.
         .args(["-icount", "shift=3,sleep=off"])
-        .arg("-semihosting-config")
-        .arg(format!(
-            "enable=on,target=native,arg={BOARD},arg={directory}"
-        ))
+        // Without an argument, the firmware writes into the current directory.
+        .args(["-semihosting-config", "enable=on,target=native"])
         .arg("-kernel")
-        .arg(firmware);
-    Ok(command)
+        .arg(firmware)
+        .current_dir(directory);
+    command
 }
 
 /// Runs `command` to its end, at most for `limit`.
