@@ -168,8 +168,65 @@ fn ideal_converter(signal: &[f64]) -> Vec<f64> {
 }
 
 #[cfg(test)]
+impl Figures {
+    /// Figures that meet every bar.
+    pub(crate) fn good() -> Self {
+        Self {
+            kernel: "any".to_owned(),
+            strings: 1,
+            modes_per_string: 1,
+            sample_rate_hz: 48_000,
+            frames: 480_000,
+            commands: 1,
+            deadline_misses: 0,
+            late_blocks: 0,
+            spi_errors: 0,
+            queue_overflows: 0,
+            commands_lost: 0,
+            limited: 0,
+            clipped: 0,
+            words_that_differ: 0,
+            rest_words_at_end: 100,
+            peak_dbfs: -12.0,
+            engine_error_dbfs: -130.0,
+            dac_error_dbfs: -96.2,
+            ideal_dac_error_dbfs: -96.3,
+            modes_measured: 1,
+            max_pitch_error_cents: 0.001,
+            max_t60_error_percent: 0.01,
+            instructions_per_frame_mean: 500.0,
+            instructions_per_frame_max: 1_000.0,
+            budget_instructions_per_frame: 2_604.0,
+        }
+    }
+}
+
+#[cfg(test)]
 mod tests {
     use super::*;
+
+    /// Others read these: none may vanish.
+    #[test]
+    fn the_file_has_the_names_that_were_promised() {
+        let file = serde_json::to_value(Figures::good()).unwrap();
+        for name in [
+            "sample_rate_hz",
+            "frames",
+            "deadline_misses",
+            "spi_errors",
+            "clipped",
+            "peak_dbfs",
+            "engine_error_dbfs",
+            "dac_error_dbfs",
+            "max_pitch_error_cents",
+            "instructions_per_frame_mean",
+            "instructions_per_frame_max",
+            "budget_instructions_per_frame",
+        ] {
+            assert!(file[name].is_number(), "{name}");
+        }
+        assert!(file["kernel"].is_string());
+    }
 
     /// Lipshitz, Wannamaker & Vanderkooy, J. Audio Eng. Soc. 40:355, 1992 (from
     /// memory): the error's power is a quarter of the square of the last place.

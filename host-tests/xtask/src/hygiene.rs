@@ -61,7 +61,11 @@ fn files() -> Result<Vec<(String, String)>> {
         .current_dir(root())
         .output()
         .context("cannot start git")?;
-    ensure!(output.status.success(), "`git ls-files` failed");
+    ensure!(
+        output.status.success(),
+        "`git ls-files` failed: {}",
+        String::from_utf8_lossy(&output.stderr).trim()
+    );
     let names = String::from_utf8(output.stdout)?;
     let files: Vec<_> = names
         .split_terminator('\0')
