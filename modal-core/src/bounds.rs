@@ -74,6 +74,24 @@ pub const PLACE: Bound = Bound::new("place", "", 1.0e-6, 1.0 - 1.0e-6);
 pub const PLUCK_HEIGHT_M: Bound = Bound::new("pluck height", "m", -0.1, 0.1);
 /// Width of a plectrum, a finger or the aperture of a pickup.
 pub const WIDTH_M: Bound = Bound::new("width", "m", 0.0, 0.5);
+/// Axial stiffness E·A of a string.
+pub const AXIAL_STIFFNESS_N: Bound = Bound::new("axial stiffness", "N", 0.0, 1.0e9);
+/// Relative lengthening of a string.
+pub const STRAIN: Bound = Bound::new("strain", "", 0.0, 0.1);
+/// Share of energy lost per radian, 1/Q.
+pub const LOSS_FACTOR: Bound = Bound::new("loss factor", "", 0.0, 1.0);
+/// Admittance of an end: velocity over force.
+pub const ADMITTANCE: Bound = Bound::new("end admittance", "s/kg", 0.0, 1.0e3);
+/// Velocity of a string or a striker.
+pub const SPEED_M_PER_S: Bound = Bound::new("speed", "m/s", -100.0, 100.0);
+/// Impulse of a striker.
+pub const IMPULSE_N_S: Bound = Bound::new("impulse", "N·s", -10.0, 10.0);
+/// Force on a string.
+pub const FORCE_N: Bound = Bound::new("force", "N", -1_000.0, 1_000.0);
+/// Duration of a contact or a push.
+pub const DURATION_S: Bound = Bound::new("duration", "s", 1.0e-6, 10.0);
+/// Gain of a pickup; negative turns its sign.
+pub const GAIN: Bound = Bound::new("gain", "", -1.0e3, 1.0e3);
 /// Index of a mode; mode 1 is the fundamental.
 pub const MODE_INDEX: Bound = Bound::new("mode index", "", 1.0, 100_000.0);
 /// Frames per second.
@@ -84,7 +102,7 @@ pub const CEILING: Bound = Bound::new("ceiling", "of full scale", 1.0 / 1_024.0,
 pub const FULL_SCALE: Bound = Bound::new("full scale", "m or m/s", 1.0e-12, 1.0e6);
 
 /// Every bound, for tests and tables.
-pub const ALL: [&Bound; 18] = [
+pub const ALL: [&Bound; 27] = [
     &LENGTH_M,
     &TENSION_N,
     &LINEAR_DENSITY,
@@ -98,6 +116,15 @@ pub const ALL: [&Bound; 18] = [
     &PLACE,
     &PLUCK_HEIGHT_M,
     &WIDTH_M,
+    &AXIAL_STIFFNESS_N,
+    &STRAIN,
+    &LOSS_FACTOR,
+    &ADMITTANCE,
+    &SPEED_M_PER_S,
+    &IMPULSE_N_S,
+    &FORCE_N,
+    &DURATION_S,
+    &GAIN,
     &MODE_INDEX,
     &SAMPLE_RATE_HZ,
     &CEILING,

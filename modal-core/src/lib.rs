@@ -81,5 +81,5 @@ pub use narrow::NarrowBank;
 pub use pickup::{DisplacementPickup, Pickup, PickupWeights, VelocityPickup};
 pub use quantise::{Coefficients, Onset};
 pub use series::{Mode, ModeSeries};
-pub use string::{StringSpec, Wire};
+pub use string::{Core, Ends, StringSpec, Wire, WoundString};
 pub use voice::{Headroom, Voice};

@@ -85,12 +85,9 @@ impl<L: Loss> ModeSeries<L> {
         &self.loss
     }
 
-    /// Frequency in Hz of mode `n` without losses, for hinged ends:
-    /// f_n = n f₀ √(1 + B n²) (Fletcher 1964; from memory).
+    /// Frequency in Hz of mode `n` without losses: [`StringSpec::frequency_hz`].
     pub fn frequency_hz(&self, n: u32) -> f64 {
-        let n = f64::from(n);
-        n * self.string.ideal_fundamental_hz()
-            * libm::sqrt(1.0 + self.string.inharmonicity() * n * n)
+        self.string.frequency_hz(n)
     }
 
     /// Mode `n`.
@@ -124,8 +121,9 @@ impl<L: Loss> ModeSeries<L> {
     /// How many modes lie below `limit_hz` (zero if none, or if the limit is
     /// not a number; at most the maximum of [`bounds::MODE_INDEX`]).
     ///
-    /// With X = limit/f₀: n = ⌊X √(2 / (1 + √(1 + 4 B X²)))⌋, the positive root
-    /// of f_n = limit written without cancellation for B → 0.
+    /// With X = limit/f₀, X √(2 / (1 + √(1 + 4 B X²))) half waves fit: the
+    /// positive root of f = limit written without cancellation for B → 0. From
+    /// these [`crate::string::Ends`] take their share.
     pub fn modes_below(&self, limit_hz: f64) -> u32 {
         if limit_hz.is_nan() {
             return 0;
@@ -133,7 +131,11 @@ impl<L: Loss> ModeSeries<L> {
         // Far above any legal mode, and far below an overflow of its square.
         let x = (limit_hz / self.string.ideal_fundamental_hz()).min(1.0e12);
         let root = libm::sqrt(1.0 + 4.0 * self.string.inharmonicity() * x * x);
-        let estimate = x * libm::sqrt(2.0 / (1.0 + root));
+        let half_waves = x * libm::sqrt(2.0 / (1.0 + root));
+        let estimate = self
+            .string
+            .ends()
+            .modes_below(half_waves, self.string.inharmonicity());
         // The cast turns negative numbers into 0.
         let mut n = estimate.min(bounds::MODE_INDEX.max) as u32;
         // Rounding can be one off at an exact hit.

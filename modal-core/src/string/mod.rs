@@ -1,66 +1,21 @@
-//! What the string is: length, tension, mass and stiffness.
+//! What the string is: length, tension, mass, stiffness and ends.
+
+mod ends;
+mod fret;
+mod strength;
+mod wire;
+
+pub use ends::Ends;
+pub use fret::{fret_distance_m, fretting_cents, pressing_strain};
+pub use strength::{Load, LoadLevel, music_wire_strength_pa};
+pub use wire::{Core, Wire, WoundString};
 
 use core::f64::consts::PI;
 
 use crate::bounds;
 use crate::error::Result;
 
-/// A solid round wire: diameter and material.
-#[derive(Clone, Copy, Debug, PartialEq)]
-#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
-pub struct Wire {
-    diameter_m: f64,
-    density_kg_per_m3: f64,
-    youngs_modulus_pa: f64,
-}
-
-impl Wire {
-    /// A wire of `diameter_m`, density and Young's modulus of its material.
-    ///
-    /// # Errors
-    /// A value outside [`bounds::DIAMETER_M`], [`bounds::DENSITY`] or
-    /// [`bounds::YOUNGS_MODULUS`].
-    pub fn new(diameter_m: f64, density_kg_per_m3: f64, youngs_modulus_pa: f64) -> Result<Self> {
-        Ok(Self {
-            diameter_m: bounds::DIAMETER_M.check(diameter_m)?,
-            density_kg_per_m3: bounds::DENSITY.check(density_kg_per_m3)?,
-            youngs_modulus_pa: bounds::YOUNGS_MODULUS.check(youngs_modulus_pa)?,
-        })
-    }
-
-    /// Diameter in m.
-    #[must_use]
-    pub fn diameter_m(&self) -> f64 {
-        self.diameter_m
-    }
-
-    /// Young's modulus in Pa.
-    #[must_use]
-    pub fn youngs_modulus_pa(&self) -> f64 {
-        self.youngs_modulus_pa
-    }
-
-    /// Cross-section π d²/4 in m².
-    #[must_use]
-    pub fn area_m2(&self) -> f64 {
-        0.25 * PI * self.diameter_m * self.diameter_m
-    }
-
-    /// Mass per metre in kg/m: density times cross-section.
-    #[must_use]
-    pub fn linear_density_kg_per_m(&self) -> f64 {
-        self.density_kg_per_m3 * self.area_m2()
-    }
-
-    /// Bending stiffness E·I in N·m², with I = π d⁴/64 of a round section.
-    #[must_use]
-    pub fn bending_stiffness_n_m2(&self) -> f64 {
-        let d2 = self.diameter_m * self.diameter_m;
-        self.youngs_modulus_pa * PI * d2 * d2 / 64.0
-    }
-}
-
-/// A uniform stiff string between two hinged ends.
+/// A uniform stiff string between two rigid ends, hinged unless said otherwise.
 ///
 /// Equation of motion: μ y_tt = T y_xx − E·I y_xxxx, less the losses
 /// (Fletcher & Rossing, *The Physics of Musical Instruments*, ch. 2; from memory).
@@ -71,6 +26,7 @@ pub struct StringSpec {
     tension_n: f64,
     linear_density_kg_per_m: f64,
     bending_stiffness_n_m2: f64,
+    ends: Ends,
 }
 
 impl StringSpec {
@@ -90,6 +46,7 @@ impl StringSpec {
             tension_n: bounds::TENSION_N.check(tension_n)?,
             linear_density_kg_per_m: bounds::LINEAR_DENSITY.check(linear_density_kg_per_m)?,
             bending_stiffness_n_m2: bounds::BENDING_STIFFNESS.check(bending_stiffness_n_m2)?,
+            ends: Ends::Hinged,
         })
     }
 
@@ -139,6 +96,86 @@ impl StringSpec {
             wire.linear_density_kg_per_m(),
             wire.bending_stiffness_n_m2(),
         )
+    }
+
+    /// As [`StringSpec::tuned`] for other ends: the tension is found by halving
+    /// its interval, to the last bit or nearly.
+    ///
+    /// # Errors
+    /// As [`StringSpec::tuned`].
+    pub fn tuned_between(
+        ends: Ends,
+        length_m: f64,
+        pitch_hz: f64,
+        linear_density_kg_per_m: f64,
+        bending_stiffness_n_m2: f64,
+    ) -> Result<Self> {
+        let flexible = Self::tuned(length_m, pitch_hz, linear_density_kg_per_m, 0.0)?;
+        bounds::BENDING_STIFFNESS.check(bending_stiffness_n_m2)?;
+        let with_tension = |tension_n: f64| Self {
+            tension_n,
+            bending_stiffness_n_m2,
+            ends,
+            ..flexible
+        };
+        // Stiffness only ever raises the pitch, so the flexible string pulls most.
+        let (mut low, mut high) = (bounds::TENSION_N.min, flexible.tension_n);
+        for _ in 0..80 {
+            let middle = 0.5 * (low + high);
+            if with_tension(middle).frequency_hz(1) < pitch_hz {
+                low = middle;
+            } else {
+                high = middle;
+            }
+        }
+        let found = with_tension(high);
+        if found.frequency_hz(1) > pitch_hz * (1.0 + 1.0e-9) {
+            // Even the smallest tension is too much: a bar rather than a string.
+            bounds::TENSION_N.check(0.0)?;
+        }
+        Ok(found)
+    }
+
+    /// The same string between other ends; the tension stays.
+    #[must_use]
+    pub fn between(self, ends: Ends) -> Self {
+        Self { ends, ..self }
+    }
+
+    /// The same string stopped at `fret` (0: open) of a scale of equal
+    /// temperament: the length is divided by 2^(fret/12), the tension stays
+    /// ([`fretting_cents`] tells what pressing the string adds).
+    ///
+    /// # Errors
+    /// A length outside [`bounds::LENGTH_M`].
+    pub fn fretted(self, fret: u8) -> Result<Self> {
+        let length_m = self.length_m * libm::exp2(-f64::from(fret) / 12.0);
+        Ok(Self {
+            length_m: bounds::LENGTH_M.check(length_m)?,
+            ..self
+        })
+    }
+
+    /// Frequency in Hz of mode `n` without losses: u f₀ √(1 + B u²), where u is
+    /// n for hinged ends and a little more for clamped ones (see [`Ends`];
+    /// Fletcher, J. Acoust. Soc. Am. 36:203, 1964; from memory).
+    #[must_use]
+    pub fn frequency_hz(&self, n: u32) -> f64 {
+        let inharmonicity = self.inharmonicity();
+        let u = self.ends.effective_index(n, inharmonicity);
+        u * self.ideal_fundamental_hz() * libm::sqrt(1.0 + inharmonicity * u * u)
+    }
+
+    /// The two ends.
+    #[must_use]
+    pub fn ends(&self) -> Ends {
+        self.ends
+    }
+
+    /// Characteristic impedance √(T μ) in kg/s.
+    #[must_use]
+    pub fn impedance_kg_per_s(&self) -> f64 {
+        libm::sqrt(self.tension_n * self.linear_density_kg_per_m)
     }
 
     /// Speaking length L in m.
