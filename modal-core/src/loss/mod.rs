@@ -1,4 +1,15 @@
 //! How the vibration of each mode dies.
+//!
+//! Every law gives a decay rate σ; Q = ω/(2σ), so adding rates is adding 1/Q.
+//! A tuple of laws is their sum: `(AirLoss::new(d)?, EndLoss::new(g)?)`.
+
+mod air;
+mod material;
+mod measured;
+
+pub use air::{Air, AirLoss};
+pub use material::{BendingLoss, EndLoss, LossFactor, ThermoelasticLoss, WireThermal};
+pub use measured::MeasuredT60;
 
 use core::f64::consts::{LN_10, TAU};
 
@@ -25,6 +36,21 @@ impl<L: Loss + ?Sized> Loss for &L {
         (**self).decay_rate_per_s(n, frequency_hz, string)
     }
 }
+
+macro_rules! sum_of_losses {
+    ($($law:ident $index:tt),+) => {
+        impl<$($law: Loss),+> Loss for ($($law,)+) {
+            fn decay_rate_per_s(&self, n: u32, frequency_hz: f64, string: &StringSpec) -> f64 {
+                0.0 $(+ self.$index.decay_rate_per_s(n, frequency_hz, string))+
+            }
+        }
+    };
+}
+
+sum_of_losses!(A 0, B 1);
+sum_of_losses!(A 0, B 1, C 2);
+sum_of_losses!(A 0, B 1, C 2, D 3);
+sum_of_losses!(A 0, B 1, C 2, D 3, E 4);
 
 /// The same T60 for every mode.
 #[derive(Clone, Copy, Debug, PartialEq)]
