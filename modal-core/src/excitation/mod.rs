@@ -2,8 +2,12 @@
 //! the moment it is let go.
 
 mod pluck;
+mod shape;
+mod strike;
 
-pub use pluck::{PointPluck, RoundedPluck};
+pub use pluck::{PointPluck, RoundedPluck, Tip};
+pub use shape::{Between, Corner, HalfSine, Of, Parabola, Polyline, Sampled};
+pub use strike::{ContactStrike, Profile, SlowPush, Strike};
 
 use crate::series::Mode;
 use crate::string::StringSpec;
@@ -26,6 +30,13 @@ impl ModalState {
         libm::hypot(self.displacement, self.quadrature(mode))
     }
 
+    /// Phase φ of q(t) = A e^(−σ t) cos(ω_d t − φ), in rad: with losses it is not
+    /// zero even for a string let go from rest.
+    #[must_use]
+    pub fn phase(&self, mode: &Mode) -> f64 {
+        libm::atan2(self.quadrature(mode), self.displacement)
+    }
+
     /// (q̇ + σ q)/ω_d: the amplitude of the sine part.
     #[must_use]
     pub fn quadrature(&self, mode: &Mode) -> f64 {
@@ -45,5 +56,16 @@ pub trait Excitation {
 impl<X: Excitation + ?Sized> Excitation for &X {
     fn mode(&self, mode: &Mode, string: &StringSpec) -> ModalState {
         (**self).mode(mode, string)
+    }
+}
+
+/// Both at once: superposition, of a shape and its velocity, say.
+impl<A: Excitation, B: Excitation> Excitation for (A, B) {
+    fn mode(&self, mode: &Mode, string: &StringSpec) -> ModalState {
+        let (a, b) = (self.0.mode(mode, string), self.1.mode(mode, string));
+        ModalState {
+            displacement: a.displacement + b.displacement,
+            velocity: a.velocity + b.velocity,
+        }
     }
 }

@@ -5,7 +5,7 @@ use core::f64::consts::PI;
 use crate::bounds;
 use crate::error::Result;
 use crate::excitation::{Excitation, ModalState};
-use crate::maths::{sin_pi, sinc};
+use crate::maths::{raised_sinc, sin_pi, sinc};
 use crate::series::{Mode, wave_number};
 use crate::string::StringSpec;
 
@@ -46,17 +46,40 @@ impl Excitation for PointPluck {
     }
 }
 
-/// A pluck by a plectrum or finger of finite width.
+/// How the force of a tip is spread over its width `w`, with θ = n π w/(2L).
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+pub enum Tip {
+    /// Evenly: sin θ/θ. The two straight sides are joined by a parabolic arc.
+    #[default]
+    Even,
+    /// As a raised cosine, most in the middle: sin θ/(θ (1 − θ²/π²)).
+    RaisedCosine,
+}
+
+impl Tip {
+    /// Share of mode `n` that a tip of `width_m` leaves of a sharp one.
+    #[must_use]
+    pub fn factor(self, n: u32, width_m: f64, string: &StringSpec) -> f64 {
+        let angle = 0.5 * wave_number(n, string) * width_m;
+        match self {
+            Self::Even => sinc(angle),
+            Self::RaisedCosine => raised_sinc(angle),
+        }
+    }
+}
+
+/// A pluck by a plectrum or finger of finite width: the point pluck times the
+/// factor of its [`Tip`].
 ///
-/// The point pluck times sin θ/θ with θ = n π w/(2L): the force is spread
-/// evenly over the width `w`, and the two straight sides are joined by a
-/// parabolic arc. `height_m` is the height of the sharp triangle; the string
+/// `height_m` is the height of the sharp triangle; under an even tip the string
 /// itself reaches h (1 − w/(8 L p (1−p))).
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
 pub struct RoundedPluck {
     point: PointPluck,
     width_m: f64,
+    tip: Tip,
 }
 
 impl RoundedPluck {
@@ -70,7 +93,20 @@ impl RoundedPluck {
         Ok(Self {
             point: PointPluck::new(place, height_m)?,
             width_m: bounds::WIDTH_M.check(width_m)?,
+            tip: Tip::Even,
         })
+    }
+
+    /// The same pluck by another kind of tip.
+    #[must_use]
+    pub fn by(self, tip: Tip) -> Self {
+        Self { tip, ..self }
+    }
+
+    /// How the force is spread.
+    #[must_use]
+    pub fn tip(&self) -> Tip {
+        self.tip
     }
 
     /// Place as a fraction of the length.
@@ -96,8 +132,7 @@ impl Excitation for RoundedPluck {
     fn mode(&self, mode: &Mode, string: &StringSpec) -> ModalState {
         let sharp = self.point.mode(mode, string);
         ModalState {
-            displacement: sharp.displacement
-                * sinc(0.5 * wave_number(mode.n(), string) * self.width_m),
+            displacement: sharp.displacement * self.tip.factor(mode.n(), self.width_m, string),
             velocity: 0.0,
         }
     }
