@@ -32,6 +32,12 @@ pub enum Error {
         /// How many fit.
         capacity: u32,
     },
+    /// A start that has no integer form: prepare it through
+    /// [`crate::Onset::prepare`].
+    NoIntegerForm {
+        /// What start.
+        start: &'static str,
+    },
     /// A mode that does not oscillate: its loss is too large for its frequency.
     Overdamped {
         /// Index of the mode.
@@ -67,6 +73,12 @@ impl fmt::Display for Error {
                 f,
                 "{field} = {wanted} is outside its range, 1 to {capacity}"
             ),
+            Self::NoIntegerForm { start } => {
+                write!(
+                    f,
+                    "{start} has no integer form: prepare it in floating point"
+                )
+            }
             Self::Overdamped {
                 mode,
                 decay_rate_per_s,

@@ -5,7 +5,8 @@
 //!
 //! 1. [`string`]: what the string *is*; [`loss`]: how its vibration dies;
 //! 2. [`series`]: frequency and decay of mode 1, 2, 3, …;
-//! 3. [`excitation`] and [`pickup`]: how it is started and where it is heard; [`plan`]: how loud that can get;
+//! 3. [`excitation`] and [`pickup`]: how it is started and where it is heard; [`plan`],
+//!    [`energy`], [`hearing`]: how loud that can get and how many modes it takes;
 //! 4. [`quantise`]: the one door from floating point to fixed point;
 //! 5. [`bank`] (integers only from here), [`voice`], [`instrument`], [`dac`].
 //!
@@ -50,7 +51,9 @@ extern crate std;
 pub mod bounds;
 pub mod error;
 
+pub mod energy;
 pub mod excitation;
+pub mod hearing;
 pub mod loss;
 pub mod pickup;
 pub mod plan;

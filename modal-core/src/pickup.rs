@@ -142,3 +142,109 @@ impl Pickup for VelocityPickup {
         }
     }
 }
+
+/// An end of the string.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+pub enum End {
+    /// x = 0, from where places are counted.
+    Near,
+    /// x = L.
+    Far,
+}
+
+/// Hears the force of the string on a hinged end, in N: a sensor under the
+/// bridge.
+///
+/// T y′ − E·I y‴ at x = 0, +T k_n (1 + B n²) per mode; −T k_n (−1)^n (1 + B n²)
+/// at x = L. An ideal pluck gives a rectangular wave.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+pub struct BridgeForce(pub End);
+
+impl Pickup for BridgeForce {
+    fn weights(&self, mode: &Mode, string: &StringSpec) -> PickupWeights {
+        let n = f64::from(mode.n());
+        let stiff = 1.0 + string.inharmonicity() * n * n;
+        let size = string.tension_n() * wave_number(mode.n(), string) * stiff;
+        let sign = match self.0 {
+            End::Far if mode.n().is_multiple_of(2) => -1.0,
+            End::Near | End::Far => 1.0,
+        };
+        PickupWeights {
+            displacement: sign * size,
+            velocity: 0.0,
+        }
+    }
+}
+
+/// A pickup with a gain; a negative one turns its sign (out of phase).
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
+pub struct Amplified<P> {
+    pickup: P,
+    gain: f64,
+}
+
+impl<P: Pickup> Amplified<P> {
+    /// `pickup` times `gain`.
+    ///
+    /// # Errors
+    /// A gain outside [`bounds::GAIN`].
+    pub fn new(pickup: P, gain: f64) -> Result<Self> {
+        Ok(Self {
+            pickup,
+            gain: bounds::GAIN.check(gain)?,
+        })
+    }
+}
+
+impl<P: Pickup> Pickup for Amplified<P> {
+    fn weights(&self, mode: &Mode, string: &StringSpec) -> PickupWeights {
+        let weights = self.pickup.weights(mode, string);
+        PickupWeights {
+            displacement: self.gain * weights.displacement,
+            velocity: self.gain * weights.velocity,
+        }
+    }
+}
+
+macro_rules! sum_of_pickups {
+    ($($pickup:ident $index:tt),+) => {
+        /// All together, each with its own gain and sign.
+        impl<$($pickup: Pickup),+> Pickup for ($($pickup,)+) {
+            fn weights(&self, mode: &Mode, string: &StringSpec) -> PickupWeights {
+                let mut sum = PickupWeights::default();
+                $(
+                    let weights = self.$index.weights(mode, string);
+                    sum.displacement += weights.displacement;
+                    sum.velocity += weights.velocity;
+                )+
+                sum
+            }
+        }
+    };
+}
+
+sum_of_pickups!(A 0, B 1);
+sum_of_pickups!(A 0, B 1, C 2);
+sum_of_pickups!(A 0, B 1, C 2, D 3);
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::loss::ConstantT60;
+    use crate::series::ModeSeries;
+
+    #[test]
+    fn two_equal_pickups_out_of_phase_hear_nothing() {
+        let string = StringSpec::new(0.7, 60.0, 1.0e-3, 2.0e-5).unwrap();
+        let series = ModeSeries::new(string, ConstantT60::new(3.0).unwrap());
+        let pickup = VelocityPickup::new(0.2, 0.01).unwrap();
+        let pair = (pickup, Amplified::new(pickup, -1.0).unwrap());
+        for n in 1..20 {
+            let mode = series.mode(n).unwrap();
+            assert_eq!(pair.weights(&mode, &string), PickupWeights::default());
+        }
+    }
+}

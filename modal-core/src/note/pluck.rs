@@ -4,8 +4,8 @@ use core::f64::consts::PI;
 
 use crate::bank::{Coefficient, FOLDED_SHIFT, Increment};
 use crate::bounds::{self, Bound};
-use crate::error::Result;
-use crate::excitation::RoundedPluck;
+use crate::error::{Error, Result};
+use crate::excitation::{RoundedPluck, Tip};
 use crate::fixed::Gain;
 use crate::note::ModeQ;
 use crate::note::polynomial::{mul_high, slack};
@@ -75,7 +75,8 @@ impl PluckSpec {
     ///
     /// # Errors
     /// `full_scale` outside [`bounds::FULL_SCALE`]; a strength outside
-    /// [`PLUCK_STRENGTH`].
+    /// [`PLUCK_STRENGTH`]; [`Error::NoIntegerForm`] for another tip than
+    /// [`Tip::Even`].
     pub fn displacement(
         string: &StringSpec,
         pluck: &RoundedPluck,
@@ -83,6 +84,7 @@ impl PluckSpec {
         full_scale: f64,
     ) -> Result<Self> {
         bounds::FULL_SCALE.check(full_scale)?;
+        check_tip(pluck)?;
         let strength = Strength::new(strength_m(pluck) / full_scale)?;
         let listening = (pickup.place(), pickup.aperture_m());
         Ok(Self::new(
@@ -108,6 +110,7 @@ impl PluckSpec {
     ) -> Result<Self> {
         bounds::FULL_SCALE.check(full_scale)?;
         bounds::SAMPLE_RATE_HZ.check(sample_rate_hz)?;
+        check_tip(pluck)?;
         // u̇ = −ω₀² a, and ω₀²/(n² (1 + B n²)) is that of mode 1 without stiffness.
         let angular = 2.0 * PI * string.ideal_fundamental_hz();
         let step = strength_m(pluck) * angular * angular / (full_scale * sample_rate_hz);
@@ -168,6 +171,15 @@ impl PluckSpec {
             strength: self.strength,
             first: Normalised::new(angle_q56),
         }
+    }
+}
+
+fn check_tip(pluck: &RoundedPluck) -> Result<()> {
+    match pluck.tip() {
+        Tip::Even => Ok(()),
+        Tip::RaisedCosine => Err(Error::NoIntegerForm {
+            start: "a pluck by a raised-cosine tip",
+        }),
     }
 }
 
