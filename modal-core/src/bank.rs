@@ -34,7 +34,7 @@ pub const INAUDIBLE_Q31: u64 = 1 << 6;
 pub const MAX_GROUPS: usize = SHIFTS.len() + 1;
 
 /// The two numbers of one mode that do not change from sample to sample.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
 #[repr(C)]
 pub struct Coefficient {
@@ -133,7 +133,7 @@ pub struct Resonator {
 }
 
 /// What a start adds to the state of one mode.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt-1", derive(defmt::Format))]
 pub struct Increment {
     /// Added to q, Q31.

@@ -2,14 +2,14 @@
 
 use core::f64::consts::PI;
 
-use crate::bank::{Coefficient, FOLDED_SHIFT, Increment};
+use crate::bank::{Coefficient, Increment};
 use crate::bounds::{self, Bound};
 use crate::error::{Error, Result};
 use crate::excitation::{RoundedPluck, Tip};
 use crate::fixed::Gain;
-use crate::note::ModeQ;
-use crate::note::polynomial::{mul_high, slack};
+use crate::note::polynomial::{mul_high, rough_slack, slack};
 use crate::note::sine::{Place, Sines};
+use crate::note::sweep::{GENTLE_Q36, ModeQ};
 use crate::pickup::{DisplacementPickup, VelocityPickup};
 use crate::string::StringSpec;
 
@@ -40,6 +40,20 @@ impl Strength {
             mantissa: libm::rint(scaled) as i32,
             places: places as u32,
         })
+    }
+
+    /// `value` times the factor, saturating; a level that large is refused.
+    #[inline(always)]
+    fn of(self, value: i32) -> i32 {
+        let high = ((i64::from(value) * i64::from(self.mantissa)) >> 32) as i32;
+        match self.places.checked_sub(32) {
+            Some(down) => high >> down,
+            None => {
+                let up = 32 - self.places;
+                let whole = high << up;
+                if whole >> up == high { whole } else { i32::MAX }
+            }
+        }
     }
 }
 
@@ -202,22 +216,21 @@ pub(super) struct Start {
 impl Start {
     /// The increment of the next mode and a bound of its amplitude, Q31.
     #[inline(always)]
-    pub(super) fn next(&mut self, mode: &ModeQ, coefficient: Coefficient) -> (Increment, u64) {
+    pub(super) fn next(&mut self, mode: &ModeQ, coefficient: Coefficient) -> (Increment, u32) {
         // sin · sin in Q31, narrowed by the widths.
         let product = i64::from(self.place.step()) * i64::from(self.pickup.step());
         let mut both = (product >> 29).min(i64::from(i32::MAX)) as i32;
         for width in [&mut self.tip, &mut self.aperture].into_iter().flatten() {
             both = width.apply(both, mode.n);
         }
-        let Strength { mantissa, places } = self.strength;
         match self.heard {
             Heard::Displacement => {
                 let ratio = self.first.over(mode.squared, mode.places);
                 let shape = ((i64::from(both) * i64::from(ratio)) >> 32) as i32;
-                let a = (i64::from(shape) * i64::from(mantissa)) >> places;
-                displaced(mode, a)
+                displaced(mode, self.strength.of(shape))
             }
             Heard::Velocity => {
+                let Strength { mantissa, places } = self.strength;
                 // Q47.
                 let step = (i64::from(both) * i64::from(mantissa)) >> (places - 16);
                 struck(mode, coefficient, step)
@@ -229,52 +242,60 @@ impl Start {
 /// The increment of a mode that starts from rest at `a` (Q31), and a bound of
 /// its amplitude.
 #[inline(always)]
-fn displaced(mode: &ModeQ, a: i64) -> (Increment, u64) {
-    let shift = mode.form.shift;
-    let decay = &mode.decay;
+fn displaced(mode: &ModeQ, a: i32) -> (Increment, u32) {
     // v = a (F/2 − u + s j)/(1 − u), with −u + s j written as
-    // (s − u) − s (1 − j); folding turns the sine over.
-    let slip = ((decay.s_q40 >> 4) * u64::from(slack(mode.z))) >> 27;
-    let rest = if mode.form.folded {
-        slip as i64 - (decay.s_q40 + decay.loss_q40) as i64
+    // (s − u) − s (1 − j); folding turns the sine over. Q35.
+    let slack = if mode.decay < GENTLE_Q36 {
+        rough_slack(mode.z)
     } else {
-        (decay.s_q40 - decay.loss_q40) as i64 - slip as i64
+        slack(mode.z)
     };
-    // Q40 to Q(33+S).
-    let rest = ((rest << 3) >> (10 - shift)) as i32;
+    let slip = mul_high(mode.decay, slack) as i32;
+    let rest = if mode.folded {
+        slip - (mode.decay / 2 + mode.loss / 2) as i32
+    } else {
+        (mode.decay - mode.loss) as i32 / 2 - slip
+    };
+    // To Q(33+S).
+    let rest = if mode.shift > 2 {
+        rest << (mode.shift - 2)
+    } else {
+        rest >> (2 - mode.shift)
+    };
     let step = (mode.pull / 2) as i32 + rest;
-    let step = step + ((i64::from(step) * i64::from(grown(decay.loss_q32()))) >> 32) as i32;
-    let level = a.unsigned_abs();
-    // Too strong a pluck is refused by its level, not by this clamp.
-    let a = a.clamp(i64::from(i32::MIN), i64::from(i32::MAX)) as i32;
+    let step = step + ((i64::from(step) * i64::from(grown(mode.loss >> 4))) >> 32) as i32;
     let increment = Increment::new(a, (i64::from(a) * i64::from(step)) >> 1);
-    // c = s a/θ; s < θ/4 was checked, and √(1 + 1/16) is below 33/32. Where
-    // s < θ/64, √(1 + 2^−12) is below 1 + 2^−13.
-    let gentle = decay.squared_q56 >> 32 < u64::from(mode.z) >> 17;
+    // c = s a/θ, and s < θ/4: √(1 + 1/16) is below 33/32. Where s < θ/64,
+    // √(1 + 2^−12) is below 1 + 2^−13; s² in Q40 against θ²/8 in Q32.
+    let level = a.unsigned_abs();
+    let gentle = mul_high(mode.decay, mode.decay) < mode.z >> 1;
     let quadrature = level >> if gentle { 13 } else { 5 };
-    (increment, level + quadrature + 2)
+    (increment, level.saturating_add(quadrature + 2))
 }
 
 /// The increment of a mode that starts from zero with `step` per frame (Q47),
 /// and a bound of its amplitude.
 #[inline(always)]
-fn struck(mode: &ModeQ, coefficient: Coefficient, step: i64) -> (Increment, u64) {
+fn struck(mode: &ModeQ, coefficient: Coefficient, step: i64) -> (Increment, u32) {
     // v = step j/(1 − u).
     let v = step - (((step >> 16) * i64::from(slack(mode.z))) >> 15);
-    let v = v + (((v >> 16) * i64::from(grown(mode.decay.loss_q32()))) >> 16);
-    let v = if mode.form.folded { -v } else { v };
-    let amplitude = coefficient.amplitude(mode.form.shift, 0, v);
-    (Increment::new(0, v << (16 + mode.form.shift)), amplitude)
+    let v = v + (((v >> 16) * i64::from(grown(mode.loss >> 4))) >> 16);
+    let v = if mode.folded { -v } else { v };
+    let amplitude = coefficient.amplitude(mode.shift, 0, v);
+    let amplitude = u32::try_from(amplitude).unwrap_or(u32::MAX);
+    (Increment::new(0, v << (16 + mode.shift)), amplitude)
 }
 
-/// 1/(1 − u) − 1 in Q32, for u below 0.3.
+/// 1/(1 − u) − 1 in Q32, for u up to 1/16.
 #[inline(always)]
 fn grown(loss_q32: u32) -> u32 {
+    let squared = mul_high(loss_q32, loss_q32);
     if loss_q32 < 1 << 22 {
-        loss_q32 + mul_high(loss_q32, loss_q32)
+        loss_q32 + squared
     } else {
-        let kept = (1_u64 << 32) - u64::from(loss_q32);
-        ((u64::from(loss_q32) << 32) / kept) as u32
+        let cubed = mul_high(squared, loss_q32);
+        let fourth = mul_high(squared, squared);
+        loss_q32 + squared + cubed + fourth + mul_high(cubed, squared)
     }
 }
 
@@ -357,5 +378,3 @@ impl Width {
         ((i64::from(value) * factor_q31) >> 31) as i32
     }
 }
-
-const _: () = assert!(FOLDED_SHIFT == -2, "the shifts above fit -2 to 10");

@@ -1,6 +1,7 @@
 //! The integer road against the road through floating point.
 
 use super::*;
+use crate::bank::Group;
 use crate::excitation::RoundedPluck;
 use crate::pickup::{DisplacementPickup, VelocityPickup};
 use crate::plan;
@@ -82,7 +83,7 @@ fn compare(onset: &Onset<128>, reference: &Onset<128>, ceiling: f64) {
     for ((ours, theirs), (form, reference_form)) in both.zip(forms) {
         let error = f64::from(ours.q) - f64::from(theirs.q);
         assert!(error.abs() < tolerance, "{error}");
-        let scaled = |one: &crate::bank::Increment, form: Group| {
+        let scaled = |one: &Increment, form: Group| {
             one.velocity() as f64 / 2.0_f64.powi(32 + i32::from(form.shift))
         };
         let error = scaled(ours, form) - scaled(theirs, reference_form);
