@@ -2,7 +2,6 @@
 //! written again from the published formulas without any code of `modal-core`,
 //! and the measures that compare the two.
 
-pub mod generate;
 pub mod measure;
 pub mod performance;
 pub mod reference;

@@ -1,1 +1,0 @@
-//! Random inputs for the property tests, from the bounds of `modal-core`.
