@@ -86,3 +86,9 @@ pub use quantise::{Coefficients, Onset};
 pub use series::{Mode, ModeSeries};
 pub use string::{Core, Ends, StringSpec, Wire, WoundString};
 pub use voice::{Headroom, Voice};
+
+/// The examples of the documents beside the code, compiled.
+#[cfg(doctest)]
+#[doc = include_str!("../../README.md")]
+#[doc = include_str!("../../DEVELOPERS.md")]
+struct Documents;
