@@ -48,7 +48,8 @@ fn strings(checks: &mut Vec<Check>) {
             1e-9,
         ));
     }
-    let table: [(StringSpec, Ends, &[(u32, f64)]); 8] = [
+    type Modes = &'static [(u32, f64)];
+    let table: [(StringSpec, Ends, Modes); 8] = [
         (
             thin,
             Ends::Hinged,

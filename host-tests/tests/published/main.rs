@@ -1,5 +1,6 @@
 //! Values from outside the project: books, standards, handbooks, tables and
 //! reference programs, one file a source. Prints how many were compared.
+#![allow(clippy::expect_used, clippy::panic, reason = "a test may fail")]
 
 mod astm_a228;
 mod auditory_list;

@@ -277,6 +277,10 @@ fn displaced(mode: &ModeQ, a: i32) -> (Increment, u32) {
 /// and a bound of its amplitude.
 #[inline(always)]
 fn struck(mode: &ModeQ, coefficient: Coefficient, step: i64) -> (Increment, u32) {
+    if step.unsigned_abs() >> 48 != 0 {
+        // Beyond twice full scale: the level refuses it.
+        return (Increment::default(), u32::MAX);
+    }
     // v = step j/(1 − u).
     let v = step - (((step >> 16) * i64::from(slack(mode.z))) >> 15);
     let v = v + (((v >> 16) * i64::from(grown(mode.loss >> 4))) >> 16);

@@ -1,0 +1,196 @@
+//! Nothing wraps, whatever is played: a search that tries to break the headroom.
+#![allow(clippy::expect_used, clippy::panic, reason = "a test may fail")]
+
+mod support;
+
+use modal_core::bank::Resonator;
+use modal_core::{Coefficients, Headroom, Instrument, ModeBank, ModeSeries, TwoT60, Voice};
+use proptest::prelude::*;
+use support::{MODES, Scene, scene};
+
+/// The displacements and one-frame steps of all modes as they should be without
+/// a limit on their size: wide integers beside the bank's own.
+struct Wide {
+    modes: Vec<(i128, i128)>,
+}
+
+impl Wide {
+    fn of(resonators: &[Resonator]) -> Self {
+        let modes = resonators
+            .iter()
+            .map(|one| (i128::from(one.state.q), i128::from(one.state.velocity())))
+            .collect();
+        Self { modes }
+    }
+
+    /// One frame of every mode; the sum that is heard.
+    fn step(&mut self, voice: &Voice<MODES>, odd: bool) -> i128 {
+        let forms: Vec<_> = voice
+            .bank()
+            .groups()
+            .iter()
+            .flat_map(|group| std::iter::repeat_n(*group, usize::from(group.modes)))
+            .collect();
+        let mut heard = 0;
+        for (index, (q, velocity)) in self.modes.iter_mut().enumerate() {
+            let coefficient = voice.bank().resonators()[index].coefficient;
+            let form = forms[index];
+            heard += if form.folded && odd { -*q } else { *q };
+            let high = *velocity >> 32;
+            *velocity +=
+                i128::from(coefficient.damping) * high + i128::from(coefficient.restoring) * *q;
+            let high = *velocity >> 32;
+            *q += if form.shift >= 0 {
+                high >> form.shift
+            } else {
+                high << -form.shift
+            };
+        }
+        heard
+    }
+}
+
+fn muted(scene: &Scene) -> Coefficients<MODES> {
+    let loss = TwoT60::new(50.0, 0.15, 5_000.0, 0.05).expect("a loss");
+    let series = ModeSeries::new(*scene.series.string(), loss);
+    Coefficients::prepare(&series, MODES as u32, scene.sample_rate_hz, scene.ceiling)
+        .expect("muted")
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig::with_cases(300))]
+
+    /// Plucks at the worst moments, mutes and releases: the bank, computed with
+    /// 128 bits, never leaves 32, and never passes its ceiling.
+    #[test]
+    fn wide_integers_agree_with_the_bank(
+        scene in scene(),
+        gestures in prop::collection::vec((0_u8..5, 0_u8..4), 1..12),
+    ) {
+        let Ok(ringing) = scene.coefficients() else {
+            return Err(TestCaseError::reject("decays too slow for the ceiling"));
+        };
+        let muted = muted(&scene);
+        let full_scale = scene.full_scale(&ringing, 0.999);
+        let onset = scene.onset(&ringing, full_scale);
+        let mut voice = Voice::new(&ringing);
+        let share = i128::from(ringing.share_q31());
+        for (gesture, blocks) in gestures {
+            match gesture {
+                0..=2 => {
+                    let _ = voice.superpose(&onset);
+                }
+                3 => {
+                    let _ = voice.set_coefficients(&muted).expect("the same share");
+                }
+                _ => {
+                    let _ = voice.set_coefficients(&ringing).expect("the same share");
+                }
+            }
+            for _ in 0..=blocks {
+                let mut wide = Wide::of(voice.bank().resonators());
+                let sounding = voice.bank().sounding();
+                wide.modes.truncate(sounding);
+                let mut block = [0; 32];
+                let before = voice.clone();
+                voice.render(&mut block);
+                if before.is_silent() {
+                    continue;
+                }
+                for (frame, got) in block.into_iter().enumerate() {
+                    let heard = wide.step(&before, frame % 2 == 1);
+                    prop_assert_eq!(i128::from(got), heard, "frame {}", frame);
+                    prop_assert!(heard.abs() <= share, "{} above {}", heard, share);
+                }
+                for (q, velocity) in wide.modes {
+                    prop_assert!(i32::try_from(q).is_ok());
+                    prop_assert!(i64::try_from(velocity).is_ok());
+                }
+            }
+            prop_assert!(voice.bound_q31() <= u64::from(voice.ceiling_q31()) + 1);
+        }
+    }
+
+    /// The running bound is never below what really sounds.
+    #[test]
+    fn the_bound_is_a_bound(scene in scene(), blocks in 1_usize..400) {
+        let Ok(coefficients) = scene.coefficients() else {
+            return Err(TestCaseError::reject("decays too slow for the ceiling"));
+        };
+        let full_scale = scene.full_scale(&coefficients, 0.9);
+        let mut voice = Voice::new(&coefficients);
+        let _ = voice.superpose(&scene.onset(&coefficients, full_scale));
+        for _ in 0..blocks {
+            let mut block = [0; 32];
+            voice.render(&mut block);
+        }
+        prop_assume!(!voice.is_silent());
+        // Rounding can add to the amplitudes what the ceiling keeps in reserve.
+        let reserve = u64::from(coefficients.share_q31() - coefficients.ceiling_q31());
+        let level = voice.bank().level(None);
+        // `level` itself is up to 2^-12 too high.
+        prop_assert!(level <= (voice.bound_q31() + reserve) * 4_097 / 4_096 + 4 * MODES as u64);
+    }
+}
+
+#[test]
+fn too_many_plucks_are_made_weaker_not_wrong() {
+    use modal_core::{DisplacementPickup, RoundedPluck, StringSpec};
+    let scene = Scene {
+        series: ModeSeries::new(
+            StringSpec::tuned(0.62, 98.0, 4.0e-3, 5.0e-5).expect("a string"),
+            TwoT60::new(98.0, 8.0, 5_000.0, 1.0).expect("a loss"),
+        ),
+        pluck: RoundedPluck::new(0.17, 2.0e-3, 0.0).expect("a pluck"),
+        pickup: DisplacementPickup::new(0.1, 0.0).expect("a pickup"),
+        sample_rate_hz: 48_000.0,
+        ceiling: 1.0,
+    };
+    let coefficients = scene.coefficients().expect("coefficients");
+    let full_scale = scene.full_scale(&coefficients, 0.6);
+    let onset = scene.onset(&coefficients, full_scale);
+    let mut voice = Voice::new(&coefficients);
+    assert_eq!(voice.superpose(&onset), Headroom::Full);
+    // At the same moment all amplitudes add: the second must be limited.
+    assert!(matches!(voice.superpose(&onset), Headroom::Limited(_)));
+    let mut peak = 0;
+    for _ in 0..2_000 {
+        let _ = voice.superpose(&onset);
+        let mut block = [0_i32; 32];
+        voice.render(&mut block);
+        peak = block
+            .iter()
+            .map(|frame| frame.unsigned_abs())
+            .max()
+            .unwrap_or(0)
+            .max(peak);
+    }
+    assert!(peak < 1 << 31);
+    assert!(peak > 1 << 29, "{peak}");
+}
+
+#[test]
+fn ceilings_may_sum_to_full_scale_and_no_more() {
+    let string = modal_core::StringSpec::tuned(0.62, 98.0, 4.0e-3, 0.0).expect("a string");
+    let series = ModeSeries::new(
+        string,
+        TwoT60::new(98.0, 4.0, 5_000.0, 1.0).expect("a loss"),
+    );
+    let voice = |ceiling| {
+        let coefficients =
+            Coefficients::<8>::prepare(&series, 8, 48_000.0, ceiling).expect("modes");
+        Voice::new(&coefficients)
+    };
+    let mut instrument = Instrument::<4, 8, 32>::new();
+    for index in 0..3 {
+        assert_eq!(instrument.add_voice(voice(1.0 / 3.0)), Ok(index));
+    }
+    assert!(instrument.add_voice(voice(0.01)).is_err());
+    let mut small = Instrument::<1, 8, 32>::new();
+    assert_eq!(small.add_voice(voice(0.1)), Ok(0));
+    let refused = small.add_voice(voice(0.1)).expect_err("one string at most");
+    assert_eq!(
+        refused.to_string(),
+        "strings = 2 is outside its range, 1 to 1"
+    );
+}

@@ -1,0 +1,169 @@
+//! Random strings, plucks and pickups from the bounds of `modal-core`.
+#![allow(
+    unreachable_pub,
+    clippy::expect_used,
+    reason = "shared by the test files"
+)]
+#![allow(dead_code, reason = "each test file uses a part")]
+
+use modal_core::bounds::{self, Bound};
+use modal_core::{
+    Coefficients, DisplacementPickup, ModeSeries, Onset, PickupWeights, RoundedPluck, StringSpec,
+    TwoT60, plan,
+};
+use proptest::prelude::*;
+
+/// A value of `bound` between `from` and `to` of its range, evenly over the
+/// logarithm.
+pub fn log_between(bound: &'static Bound, from: f64, to: f64) -> impl Strategy<Value = f64> {
+    let (low, high) = (from.max(bound.min), to.min(bound.max));
+    (low.ln()..high.ln()).prop_map(f64::exp)
+}
+
+/// Any bit pattern, the special values often.
+pub fn any_number() -> impl Strategy<Value = f64> {
+    prop_oneof![
+        any::<u64>().prop_map(f64::from_bits),
+        any::<u32>().prop_map(|bits| f64::from(f32::from_bits(bits))),
+        prop::sample::select(vec![
+            0.0,
+            -0.0,
+            1.0,
+            -1.0,
+            f64::NAN,
+            f64::INFINITY,
+            f64::NEG_INFINITY,
+            f64::MIN_POSITIVE,
+            f64::MAX,
+            0.5,
+            1.0e-3,
+            440.0,
+        ]),
+    ]
+}
+
+/// A string that could be on an instrument: pitch 25 Hz to 5 kHz, B up to 0.01.
+pub fn string() -> impl Strategy<Value = StringSpec> {
+    (
+        log_between(&bounds::LENGTH_M, 0.05, 3.0),
+        log_between(&bounds::FREQUENCY_HZ, 25.0, 5_000.0),
+        log_between(&bounds::LINEAR_DENSITY, 1.0e-4, 2.0e-2),
+        prop_oneof![
+            Just(0.0),
+            (1.0e-7_f64.ln()..0.01_f64.ln()).prop_map(f64::exp)
+        ],
+    )
+        .prop_filter_map("tension out of range", |(length, pitch, density, b)| {
+            // B = π² EI/(T L²) with the tension of the flexible string.
+            let tension = density * (2.0 * length * pitch).powi(2);
+            let stiffness = b * tension * length * length / std::f64::consts::PI.powi(2);
+            StringSpec::tuned(length, pitch, density, stiffness).ok()
+        })
+}
+
+/// Losses from a fifth of a second to twenty seconds, shorter at 5 kHz.
+pub fn losses() -> impl Strategy<Value = TwoT60> {
+    (log_between(&bounds::T60_S, 0.2, 20.0), 0.03..0.95).prop_map(|(long, share)| {
+        TwoT60::new(50.0, long, 5_000.0, share * long).expect("within the range")
+    })
+}
+
+/// A pluck with a tip of up to a twentieth of a metre.
+pub fn pluck() -> impl Strategy<Value = RoundedPluck> {
+    (0.02..0.98, 1.0e-4..1.0e-2, 0.0..0.02).prop_map(|(place, height, width)| {
+        RoundedPluck::new(place, height, width).expect("a pluck")
+    })
+}
+
+/// A displacement pickup.
+pub fn pickup() -> impl Strategy<Value = DisplacementPickup> {
+    (0.02..0.98, 0.0..0.02)
+        .prop_map(|(place, width)| DisplacementPickup::new(place, width).expect("a pickup"))
+}
+
+/// A string that is started and heard, scaled to a share of its ceiling.
+#[derive(Clone, Debug)]
+pub struct Scene {
+    pub series: ModeSeries<TwoT60>,
+    pub pluck: RoundedPluck,
+    pub pickup: DisplacementPickup,
+    pub sample_rate_hz: f64,
+    pub ceiling: f64,
+}
+
+pub const MODES: usize = 64;
+
+pub fn scene() -> impl Strategy<Value = Scene> {
+    (
+        string(),
+        losses(),
+        pluck(),
+        pickup(),
+        prop::sample::select(vec![32_000.0, 44_100.0, 48_000.0, 96_000.0]),
+        prop::sample::select(vec![0.125, 0.25, 1.0]),
+    )
+        .prop_map(
+            |(string, loss, pluck, pickup, sample_rate_hz, ceiling)| Scene {
+                series: ModeSeries::new(string, loss),
+                pluck,
+                pickup,
+                sample_rate_hz,
+                ceiling,
+            },
+        )
+}
+
+impl Scene {
+    pub fn coefficients(&self) -> modal_core::Result<Coefficients<MODES>> {
+        Coefficients::prepare(
+            &self.series,
+            MODES as u32,
+            self.sample_rate_hz,
+            self.ceiling,
+        )
+    }
+
+    /// The heard level that is full scale if the pluck is `share` of the ceiling.
+    pub fn full_scale(&self, coefficients: &Coefficients<MODES>, share: f64) -> f64 {
+        let modes = coefficients.modes() as u32;
+        let level = plan::l1_bound(&self.series, &self.pluck, &self.pickup, modes).expect("modes");
+        level / (share * f64::from(coefficients.ceiling_q31()) / 2.0_f64.powi(31))
+    }
+
+    pub fn onset(&self, coefficients: &Coefficients<MODES>, full_scale: f64) -> Onset<MODES> {
+        Onset::prepare(
+            coefficients,
+            &self.series,
+            &self.pluck,
+            &self.pickup,
+            full_scale,
+        )
+        .expect("it was scaled to fit")
+    }
+}
+
+/// Hears every mode alike.
+#[derive(Clone, Copy, Debug)]
+pub struct Everywhere;
+
+impl modal_core::Pickup for Everywhere {
+    fn weights(&self, _: &modal_core::Mode, _: &StringSpec) -> PickupWeights {
+        PickupWeights {
+            displacement: 1.0,
+            velocity: 0.0,
+        }
+    }
+}
+
+/// Starts one mode alone, at 1.
+#[derive(Clone, Copy, Debug)]
+pub struct Alone(pub u32);
+
+impl modal_core::Excitation for Alone {
+    fn mode(&self, mode: &modal_core::Mode, _: &StringSpec) -> modal_core::ModalState {
+        modal_core::ModalState {
+            displacement: f64::from(u8::from(mode.n() == self.0)),
+            velocity: 0.0,
+        }
+    }
+}
