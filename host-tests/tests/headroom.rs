@@ -133,6 +133,90 @@ proptest! {
     }
 }
 
+/// A start that was prepared for one pitch and meets the voice at another is a
+/// louder one there, and has to be counted as that.
+#[test]
+fn a_start_for_other_coefficients_is_counted_as_what_it_is() {
+    use modal_core::{Onset, RoundedPluck, StringSpec, VelocityPickup};
+    let series = |pitch_hz: f64, t60_s: f64| {
+        let string = StringSpec::tuned(0.6, pitch_hz, 1.0e-3, 0.0).expect("a string");
+        let loss = TwoT60::new(100.0, t60_s, 5_000.0, 0.5 * t60_s).expect("a loss");
+        ModeSeries::new(string, loss)
+    };
+    let prepare = |series: &ModeSeries<TwoT60>| {
+        Coefficients::<MODES>::prepare(series, 16, 48_000.0, 1.0).expect("coefficients")
+    };
+    let high = series(400.0, 4.0);
+    let at_high = prepare(&high);
+    let pluck = RoundedPluck::new(0.3, 2.0e-3, 0.0).expect("a pluck");
+    let pickup = VelocityPickup::new(0.3, 0.0).expect("a pickup");
+    let level = modal_core::plan::l1_bound(&high, &pluck, &pickup, 16).expect("modes");
+    let onset = Onset::prepare(&at_high, &high, &pluck, &pickup, 1.02 * level).expect("it fits");
+    for (pitch_hz, t60_s) in [(100.0, 4.0), (100.0, 0.02), (3_000.0, 4.0), (400.0, 0.02)] {
+        let mut voice = Voice::new(&at_high);
+        let _ = voice
+            .set_coefficients(&prepare(&series(pitch_hz, t60_s)))
+            .expect("the same share");
+        for _ in 0..50 {
+            let _ = voice.superpose(&onset);
+            let sum = voice.bank().level(None);
+            assert!(
+                sum <= (voice.bound_q31() + 1_000) * 4_097 / 4_096,
+                "{pitch_hz} {t60_s}"
+            );
+            let mut wide = Wide::of(voice.bank().resonators());
+            wide.modes.truncate(voice.bank().sounding());
+            let before = voice.clone();
+            let mut block = [0; 32];
+            voice.render(&mut block);
+            for (frame, got) in block.into_iter().enumerate() {
+                assert_eq!(
+                    i128::from(got),
+                    wide.step(&before, frame % 2 == 1),
+                    "{pitch_hz} {t60_s}"
+                );
+            }
+        }
+    }
+}
+
+/// A law of losses that damps every second mode far more must not cost the
+/// other ones their pitch.
+#[test]
+fn a_lossy_neighbour_does_not_spoil_a_mode() {
+    use modal_core::{Loss, StringSpec};
+    struct Alternating;
+    impl Loss for Alternating {
+        fn decay_rate_per_s(&self, n: u32, _: f64, _: &StringSpec) -> f64 {
+            if n.is_multiple_of(2) { 10_000.0 } else { 1.0 }
+        }
+    }
+    for ceiling in [1.0 / 64.0, 0.25, 1.0] {
+        let string = StringSpec::tuned(0.6, 3_100.0, 1.0e-3, 0.0).expect("a string");
+        let series = ModeSeries::new(string, Alternating);
+        let coefficients =
+            Coefficients::<8>::prepare(&series, 6, 48_000.0, ceiling).expect("coefficients");
+        let forms = coefficients
+            .groups()
+            .iter()
+            .flat_map(|group| std::iter::repeat_n(*group, usize::from(group.modes)));
+        for ((coefficient, form), n) in coefficients.as_slice().iter().zip(forms).zip(1..) {
+            let mode = series.mode(n).expect("a mode");
+            let k = -f64::from(coefficient.damping) / 2.0_f64.powi(32);
+            let e = -f64::from(coefficient.restoring) / 2.0_f64.powi(32 + i32::from(form.shift));
+            let r = (1.0 - k).sqrt();
+            let angle = ((1.0 + r * r - e) / (2.0 * r)).acos();
+            let angle = if form.folded {
+                std::f64::consts::PI - angle
+            } else {
+                angle
+            };
+            let cents = 1_200.0 * (angle * 48_000.0 / mode.damped_angular()).log2();
+            assert!(cents.abs() < 0.01, "mode {n}: {cents} cents");
+        }
+    }
+}
+
 #[test]
 fn too_many_plucks_are_made_weaker_not_wrong() {
     use modal_core::{DisplacementPickup, RoundedPluck, StringSpec};

@@ -222,6 +222,10 @@ pub trait ModeBank<const M: usize>: Sized {
     /// dropped, modes that it adds start at rest.
     fn retune(&mut self, coefficients: &Coefficients<M>);
 
+    /// Upper bound of the sum of the amplitudes, Q31, that adding `onset` adds to
+    /// the modes with the coefficients that they have now.
+    fn level_of(&self, onset: &Onset<M>) -> u64;
+
     /// Upper bound of the sum of the amplitudes of all modes, Q31, from the
     /// state itself, as if they went on with `coefficients` (`None`: their own).
     fn level(&self, coefficients: Option<&Coefficients<M>>) -> u64;
@@ -377,6 +381,22 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
         if self.sounding > 0 {
             self.wake();
         }
+    }
+
+    fn level_of(&self, onset: &Onset<M>) -> u64 {
+        let both = forms(onset.groups()).zip(forms(&self.groups));
+        let increments = onset.increments().iter().zip(both);
+        self.resonators
+            .iter()
+            .zip(increments)
+            .map(|(resonator, (increment, (from, to)))| {
+                let mut state = State::rest(from.shift);
+                state.q = increment.q;
+                let rest = state.velocity();
+                state.set_velocity(rest.wrapping_add(increment.velocity()));
+                amplitude(&state, from, resonator.coefficient, to)
+            })
+            .fold(0, u64::saturating_add)
     }
 
     fn level(&self, coefficients: Option<&Coefficients<M>>) -> u64 {

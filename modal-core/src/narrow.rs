@@ -14,7 +14,7 @@
 
 use heapless::Vec;
 
-use crate::bank::{Coefficient, Group, ModeBank, forms};
+use crate::bank::{Coefficient, Group, Increment, ModeBank, forms};
 use crate::fixed::{FULL_SCALE_Q31, Gain};
 use crate::quantise::{Coefficients, Onset};
 
@@ -158,6 +158,16 @@ impl NarrowMode {
     }
 }
 
+/// The step `q[n] − q[n−1]` of an increment made for `form`, Q31.
+fn step_of(increment: &Increment, form: Group, folded: bool) -> i32 {
+    let v = (increment.velocity() >> (32 + form.shift)) as i32;
+    if folded == form.folded {
+        v
+    } else {
+        increment.q.wrapping_mul(2).wrapping_sub(v)
+    }
+}
+
 /// e of the same pitch without loss: (e − u²)/(1 − u) with u = 1 − r.
 fn undamped(coefficient: Coefficient, shift: i8) -> Factor {
     let k = u64::from(coefficient.damping.unsigned_abs());
@@ -213,15 +223,27 @@ impl<const M: usize> ModeBank<M> for NarrowBank<M> {
         let increments = onset.increments().iter().zip(forms(onset.groups()));
         for (mode, (increment, form)) in self.modes.iter_mut().zip(increments) {
             let increment = increment.scaled(gain);
-            let v = (increment.velocity() >> (32 + form.shift)) as i32;
-            let v = if mode.folded == form.folded {
-                v
-            } else {
-                increment.q.wrapping_mul(2).wrapping_sub(v)
-            };
+            let v = step_of(&increment, form, mode.folded);
             mode.add(increment.q, v);
         }
         self.at_rest = false;
+    }
+
+    fn level_of(&self, onset: &Onset<M>) -> u64 {
+        let increments = onset.increments().iter().zip(forms(onset.groups()));
+        self.modes
+            .iter()
+            .zip(increments)
+            .map(|(mode, (increment, form))| {
+                let mut added = NarrowMode {
+                    q: 0,
+                    v: 0,
+                    ..*mode
+                };
+                added.add(increment.q, step_of(increment, form, mode.folded));
+                added.amplitude(mode.restoring, mode.folded)
+            })
+            .fold(0, u64::saturating_add)
     }
 
     fn scale(&mut self, gain: Gain) {

@@ -127,18 +127,33 @@ impl Sampled {
         SHIFTS.into_iter().find(fits).unwrap_or(FOLDED_SHIFT)
     }
 
-    /// Most that rounding of q can add up to in this mode's amplitude, in
-    /// units of q: half a step a frame, times √e/sin θ for its amplitude,
-    /// summed over all the past, 1/(1 − r).
+    /// Most that rounding can add up to in this mode's amplitude, in units of q:
+    /// half a step of q a frame, times √e/sin θ for its amplitude, summed over
+    /// all the past, 1/(1 − r); and half a step of v for what damping takes of
+    /// the rounded velocity, which sums to (1 + r)/sin θ.
     fn rounding_reserve(&self, shift: i8) -> f64 {
         let step = scale((-shift).max(0));
-        0.5 * step * libm::sqrt(self.restoring) / (libm::sin(self.angle) * self.decay)
+        let summed = libm::sqrt(self.restoring) / self.decay + 1.0 + self.r();
+        0.5 * step * summed / libm::sin(self.angle)
     }
 }
 
 /// 2^`shift`.
 fn scale(shift: i8) -> f64 {
     libm::ldexp(1.0, i32::from(shift))
+}
+
+/// Tells sets of coefficients apart: 64 bits mixed from all of them.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) struct Fingerprint(u32, u32);
+
+impl Fingerprint {
+    fn of(coefficients: &[Coefficient]) -> Self {
+        let mix = |sum: u32, part: i32| sum.rotate_left(7).wrapping_add(part.cast_unsigned());
+        coefficients.iter().fold(Self(0, 0), |sum, one| {
+            Self(mix(sum.0, one.restoring), mix(sum.1, one.damping))
+        })
+    }
 }
 
 /// What a string sounds like, in integers: coefficients of up to `M` modes.
@@ -156,6 +171,7 @@ pub struct Coefficients<const M: usize> {
     pub(crate) ceiling: u32,
     /// 1 − r of the mode that decays slowest, Q64, rounded down.
     pub(crate) slowest_decay_q64: u64,
+    pub(crate) fingerprint: Fingerprint,
     sample_rate_hz: f64,
 }
 
@@ -209,14 +225,16 @@ impl<const M: usize> Coefficients<M> {
             } else {
                 None
             };
-            // Two modes run side by side and share a shift; the higher one
-            // decides. Shifts never rise again, which bounds the groups.
+            // Two modes run side by side and share the lower shift. Shifts never
+            // rise again, which bounds the groups.
             let opens_a_pair = n % 2 == 1;
             let partner = next.as_ref().filter(|next| opens_a_pair && !next.folded);
             shift = if sampled.folded {
                 FOLDED_SHIFT
             } else {
-                shift.min(partner.unwrap_or(&sampled).shift(ceiling))
+                shift
+                    .min(sampled.shift(ceiling))
+                    .min(partner.unwrap_or(&sampled).shift(ceiling))
             };
             let form = Group {
                 shift,
@@ -273,6 +291,7 @@ impl<const M: usize> Coefficients<M> {
             });
         }
         Ok(Self {
+            fingerprint: Fingerprint::of(&coefficients),
             coefficients,
             groups,
             // At most full scale in Q31.
@@ -329,6 +348,7 @@ impl<const M: usize> Coefficients<M> {
 pub struct Onset<const M: usize> {
     increments: Vec<Increment, M>,
     groups: Vec<Group, MAX_GROUPS>,
+    made_with: Fingerprint,
     level: u32,
 }
 
@@ -365,12 +385,14 @@ impl<const M: usize> Onset<M> {
                 libm::rint(a * TWO_POW_31) as i32,
                 libm::rint(velocity) as i64,
             ));
-            // One unit more for the rounding of the increment itself.
+            // More for the rounding of the increment itself, and of e.
             let amplitude = libm::hypot(a, c);
             if amplitude.is_nan() {
                 return Err(refused_level(amplitude, coefficients.ceiling));
             }
-            level += amplitude * TWO_POW_31 + 1.0;
+            level += amplitude * TWO_POW_31 * (1.0 + 1.0 / 1_048_576.0)
+                + 1.0
+                + 1.0 / libm::sin(sampled.angle);
         }
         // A cast saturates.
         Self::from_integers(increments, libm::ceil(level) as u64, coefficients)
@@ -389,6 +411,7 @@ impl<const M: usize> Onset<M> {
         Ok(Self {
             increments,
             groups: coefficients.groups.clone(),
+            made_with: coefficients.fingerprint,
             level: level as u32,
         })
     }
@@ -405,7 +428,13 @@ impl<const M: usize> Onset<M> {
         &self.groups
     }
 
-    /// Bound of the sum of the amplitudes that are added, Q31.
+    /// The coefficients that the start is made with.
+    pub(crate) fn made_with(&self) -> Fingerprint {
+        self.made_with
+    }
+
+    /// Bound of the sum of the amplitudes that are added to a voice with the
+    /// coefficients that the start is made with, Q31.
     #[must_use]
     pub fn level_q31(&self) -> u32 {
         self.level
@@ -417,6 +446,7 @@ impl<const M: usize> Onset<M> {
         Self {
             increments: self.increments.iter().map(|one| one.scaled(gain)).collect(),
             groups: self.groups.clone(),
+            made_with: self.made_with,
             // Rounding can add one unit to each mode.
             level: gain
                 .apply_level(self.level)

@@ -9,7 +9,7 @@
 use crate::bank::{Bank, ModeBank};
 use crate::error::{Error, Result};
 use crate::fixed::{FULL_SCALE_Q31, Gain};
-use crate::quantise::{Coefficients, Onset};
+use crate::quantise::{Coefficients, Fingerprint, Onset};
 
 /// A voice whose bound falls below this (Q31) is put at rest: half of the last
 /// place of a 24-bit converter.
@@ -36,6 +36,7 @@ pub struct Voice<const M: usize, K = Bank<M>> {
     /// Bound of the sum of the amplitudes, Q31 with 32 more fractional bits.
     bound: u64,
     slowest_decay_q64: u64,
+    fingerprint: Fingerprint,
 }
 
 impl<const M: usize> Voice<M> {
@@ -65,6 +66,7 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
             ceiling: coefficients.ceiling,
             bound: 0,
             slowest_decay_q64: coefficients.slowest_decay_q64,
+            fingerprint: coefficients.fingerprint,
         }
     }
 
@@ -73,7 +75,12 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
     /// It sounds from the first frame of the next block. If the headroom that
     /// is left is too small, the start is made weaker: nothing ever wraps.
     pub fn superpose(&mut self, onset: &Onset<M>) -> Headroom {
-        let level = u64::from(onset.level_q31());
+        // The same increments are another amplitude under other coefficients.
+        let level = if onset.made_with() == self.fingerprint {
+            u64::from(onset.level_q31())
+        } else {
+            self.bank.level_of(onset)
+        };
         let ceiling = u64::from(self.ceiling);
         if level + self.bound_q31() > ceiling {
             // The running bound takes every mode for the slowest: look closer.
@@ -108,6 +115,7 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
         }
         self.ceiling = coefficients.ceiling;
         self.slowest_decay_q64 = coefficients.slowest_decay_q64;
+        self.fingerprint = coefficients.fingerprint;
         let ceiling = u64::from(self.ceiling);
         let mut headroom = Headroom::Full;
         if !self.is_silent() {

@@ -270,7 +270,7 @@ fn displaced(mode: &ModeQ, a: i32) -> (Increment, u32) {
     let level = a.unsigned_abs();
     let gentle = mul_high(mode.decay, mode.decay) < mode.z >> 1;
     let quadrature = level >> if gentle { 13 } else { 5 };
-    (increment, level.saturating_add(quadrature + 2))
+    (increment, level.saturating_add(quadrature + 4))
 }
 
 /// The increment of a mode that starts from zero with `step` per frame (Q47),

@@ -259,8 +259,9 @@ impl<'a> Sweep<'a> {
             .sum();
         Rounding {
             groups: self.groups,
-            // Half a step a frame, times √e/sin θ <= 1.42, summed over the past.
-            reserve: ((3 * steps) << 34) / slowest,
+            // Half a step a frame, times √e/sin θ <= 1.42, summed over the past,
+            // and 1/sin θ more (see quantise) down to an angle of 2^−11.
+            reserve: ((3 * steps) << 34) / slowest + (steps << 11),
             slowest_decay_q64: slowest << 28,
         }
     }
