@@ -2,7 +2,7 @@
 //! adds the next block of all modes to `f32` frames.
 
 use biquad::{Biquad, Coefficients, DirectForm2Transposed};
-use micromath::F32Ext as _;
+use micromath::F32;
 
 use crate::scene::{BLOCK, MODES, RATE_HZ};
 
@@ -55,8 +55,16 @@ impl Baseline for TwoPole {
 
     fn new(tones: &[Tone; MODES]) -> Self {
         Self(each(tones, |tone| {
-            let (c1, c2) = (2.0 * tone.keep * libm::cos(tone.angle), -tone.keep * tone.keep);
-            [c1 as f32, c2 as f32, tone.at(-1.0) as f32, tone.at(-2.0) as f32]
+            let (c1, c2) = (
+                2.0 * tone.keep * libm::cos(tone.angle),
+                -tone.keep * tone.keep,
+            );
+            [
+                c1 as f32,
+                c2 as f32,
+                tone.at(-1.0) as f32,
+                tone.at(-2.0) as f32,
+            ]
         }))
     }
 
@@ -80,9 +88,17 @@ impl Baseline for TwoPoleQ30 {
     fn new(tones: &[Tone; MODES]) -> Self {
         let q30 = |value: f64| (value * f64::from(1 << 30)) as i32;
         Self(each(tones, |tone| {
-            let (c1, c2) = (2.0 * tone.keep * libm::cos(tone.angle), -tone.keep * tone.keep);
+            let (c1, c2) = (
+                2.0 * tone.keep * libm::cos(tone.angle),
+                -tone.keep * tone.keep,
+            );
             // Q29 for the coefficient that reaches 2.
-            [q30(0.5 * c1), q30(c2), q30(tone.at(-1.0)), q30(tone.at(-2.0))]
+            [
+                q30(0.5 * c1),
+                q30(c2),
+                q30(tone.at(-1.0)),
+                q30(tone.at(-2.0)),
+            ]
         }))
     }
 
@@ -238,7 +254,7 @@ impl Baseline for MicromathSine {
     fn render(&mut self, block: &mut [f32; BLOCK]) {
         for mode in &mut self.0 {
             for frame in block.iter_mut() {
-                *frame += mode.next(|phase| (phase.cast_signed() as f32 * RADIANS).sin());
+                *frame += mode.next(|phase| F32(phase.cast_signed() as f32 * RADIANS).sin().0);
             }
         }
     }
@@ -341,7 +357,11 @@ impl Baseline for DelayLine {
 
     fn render(&mut self, block: &mut [f32; BLOCK]) {
         for frame in block {
-            let next = if self.at + 1 == self.length { 0 } else { self.at + 1 };
+            let next = if self.at + 1 == self.length {
+                0
+            } else {
+                self.at + 1
+            };
             let out = self.line[self.at];
             *frame += out;
             self.line[self.at] = 0.5 * (out + self.line[next]);

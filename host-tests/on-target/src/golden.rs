@@ -9,7 +9,7 @@ use modal_core::{
 use crate::scene::{BLOCK, MODES, Prepared, RATE_HZ, STRINGS, string};
 
 /// The hash that every machine has to find.
-pub const EXPECTED: u64 = 0;
+pub const EXPECTED: u64 = 0x2ed5_7344_375b_6f7e;
 
 /// FNV-1a, 64 bits (Fowler, Noll & Vo; RFC 9923).
 #[derive(Clone, Copy, Debug)]

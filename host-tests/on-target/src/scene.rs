@@ -22,7 +22,7 @@ const STRINGS_AT: [(f64, f64); STRINGS] = [
     (146.8, 2.0e-3),
     (196.0, 1.1e-3),
     (246.9, 0.7e-3),
-    (329.6, 0.4e-3),
+    (311.1, 0.4e-3),
 ];
 
 /// One string, ready to be prepared on either road.

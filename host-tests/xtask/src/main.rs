@@ -1,4 +1,5 @@
-//! The project's commands: `cargo xtask play`, `cargo xtask test`.
+//! The project's commands: `cargo xtask play`, `cargo xtask cycles`,
+//! `cargo xtask test`.
 //!
 //! A command is a file of its own. What commands share: [`setup`] (what the
 //! machine needs), [`steps`] (running programs), [`emulator`] (the firmware and
@@ -10,6 +11,7 @@ mod steps;
 mod emulator;
 
 mod bars;
+mod cycles;
 mod figures;
 mod picture;
 mod play;
@@ -52,6 +54,18 @@ enum Command {
         #[arg(long)]
         accept: bool,
     },
+    /// Count instructions on every target in the emulator.
+    ///
+    /// Also compares the kernels bit for bit and the golden stream on every
+    /// target. Ends with an error if a count rose by more than 2 %.
+    Cycles {
+        /// Write the counts to this file.
+        #[arg(long, value_name = "FILE")]
+        json: Option<PathBuf>,
+        /// Take these counts as the expected ones.
+        #[arg(long)]
+        accept: bool,
+    },
     /// Check everything: format, lints, documentation, tests, cross-builds, the
     /// emulated board.
     Test {
@@ -67,6 +81,7 @@ fn main() -> ExitCode {
             let out = out.unwrap_or_else(play::default_directory);
             play::run(&out, json.as_deref(), accept)
         }
+        Command::Cycles { json, accept } => cycles::run(json.as_deref(), accept),
         Command::Test { only } => test::run(only.as_deref().unwrap_or_default()),
     };
     match done {

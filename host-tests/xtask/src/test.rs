@@ -8,7 +8,7 @@ use console::style;
 
 use crate::setup::{self, BOARD_TARGET, TARGETS};
 use crate::steps::cargo;
-use crate::{hygiene, play};
+use crate::{cycles, hygiene, play};
 
 /// A step and its name.
 struct Step {
@@ -78,6 +78,8 @@ fn steps() -> Vec<Step> {
                 "firmware-example",
                 "--package",
                 "host-tests",
+                "--package",
+                "on-target",
             ],
         ),
         Step::cargo("tests, commands", &["test", "--package", "xtask"]),
@@ -98,6 +100,13 @@ fn steps() -> Vec<Step> {
             ],
         )
     }));
+    steps.push(Step::new(
+        "instructions and golden stream, every target",
+        || {
+            ensure!(cycles::run(None, false)?, "a count rose");
+            Ok(())
+        },
+    ));
     steps.push(Step::new("emulated board", || {
         ensure!(play::test()?, "a bar is missed");
         Ok(())
