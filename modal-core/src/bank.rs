@@ -25,10 +25,16 @@ pub const SHIFTS: [i8; 8] = [10, 8, 6, 4, 2, 0, -1, -2];
 /// The scale shift of folded modes: the only one that holds e up to 2.
 pub const FOLDED_SHIFT: i8 = -2;
 
-/// A mode of no more than this amplitude (Q31) comes to rest: a quarter of the
-/// last place of a 24-bit converter, −150 dBFS (up to −138 dBFS for modes held
-/// with negative shifts).
-pub const INAUDIBLE_Q31: u64 = 1 << 6;
+/// A mode of no more than this amplitude (Q31) comes to rest: three quarters of
+/// the last place of a 24-bit converter, −141 dBFS (twice and four times as much
+/// for modes held with the shifts −1 and −2, whose steps are as much coarser).
+/// Rounding alone keeps most modes moving by less.
+pub const INAUDIBLE_Q31: u64 = 192;
+
+/// Frames times k (Q32) after which a mode is below [`INAUDIBLE_Q31`] even from
+/// full scale: 2 ln 2²⁴ = 33.3. Its own rounding can keep it moving a little
+/// above that for ever.
+const SPENT_Q32: u64 = 34 << 32;
 
 /// Most groups in a bank: one a shift, and the folded one.
 pub const MAX_GROUPS: usize = SHIFTS.len() + 1;
@@ -244,6 +250,8 @@ pub struct Bank<const M: usize> {
     /// The group of the last sounding mode, and where it begins.
     last_group: usize,
     last_start: usize,
+    /// Frames since something was last added or exchanged.
+    elapsed: u32,
 }
 
 impl<const M: usize> Bank<M> {
@@ -267,6 +275,7 @@ impl<const M: usize> Bank<M> {
 
     /// Computes every mode from now on.
     fn wake(&mut self) {
+        self.elapsed = 0;
         self.sounding = self.resonators.len();
         self.last_group = self.groups.len().saturating_sub(1);
         let last = self.groups.last().map_or(0, |group| group.modes);
@@ -287,7 +296,14 @@ impl<const M: usize> Bank<M> {
         let from = self.sounding.saturating_sub(last);
         let pair = self.resonators.get_mut(from..self.sounding);
         let pair = pair.unwrap_or_default();
-        if pair.iter().all(|resonator| is_inaudible(resonator, group)) {
+        let elapsed = u64::from(self.elapsed);
+        let is_spent = |resonator: &Resonator| {
+            elapsed * u64::from(resonator.coefficient.damping.unsigned_abs()) >= SPENT_Q32
+        };
+        if pair
+            .iter()
+            .all(|one| is_inaudible(one, group) || is_spent(one))
+        {
             for resonator in pair {
                 resonator.state = State::rest(group.shift);
             }
@@ -314,6 +330,7 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
             sounding: 0,
             last_group: 0,
             last_start: 0,
+            elapsed: 0,
         };
         bank.retune(coefficients);
         bank
@@ -420,12 +437,13 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
     fn render<const B: usize>(&mut self, block: &mut [i32; B]) {
         let (sounding, _) = self.resonators.split_at_mut(self.sounding);
         kernel::render(&self.groups, sounding, block);
+        self.elapsed = self.elapsed.saturating_add(B as u32);
         self.retire();
     }
 }
 
-/// Whether the amplitude is at most [`INAUDIBLE_Q31`], or as many steps of q
-/// where these are coarser: its own rounding keeps a mode moving that far.
+/// Whether the amplitude is at most [`INAUDIBLE_Q31`], in steps of q where these
+/// are coarser than its last place.
 fn is_inaudible(resonator: &Resonator, group: Group) -> bool {
     let state = &resonator.state;
     let limit = INAUDIBLE_Q31 << (-group.shift).max(0);
