@@ -263,3 +263,39 @@ fn table(counts: &Counts) {
         line(label, &name, &per_string);
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    fn counts(value: u64) -> Counts {
+        let one = BTreeMap::from([("chord_block".to_owned(), value)]);
+        Counts::from([("thumbv7em".to_owned(), one)])
+    }
+
+    /// The control: a count that rises, or vanishes, is found.
+    #[test]
+    fn a_count_that_rises_by_more_than_two_percent_is_found() {
+        assert!(risen(&counts(10_000), &counts(10_000)).is_empty());
+        assert!(risen(&counts(10_000), &counts(10_200)).is_empty());
+        assert!(risen(&counts(10_000), &counts(9_000)).is_empty());
+        assert_eq!(risen(&counts(10_000), &counts(10_210)).len(), 1);
+        assert_eq!(risen(&counts(10_000), &Counts::new()).len(), 1);
+    }
+
+    /// The control: another stream, or a clock that is off, is refused.
+    #[test]
+    fn a_stream_or_a_clock_that_is_off_is_refused() {
+        let machine = &MACHINES[0];
+        let good = format!(
+            "kernel=portable\ninstructions_of_4096=4101\ngolden={:#018x}\nchord_block=7\n",
+            golden::EXPECTED
+        );
+        assert!(machine.read(&good).is_ok());
+        let other = format!("{:#018x}", golden::EXPECTED ^ 1);
+        let expected = format!("{:#018x}", golden::EXPECTED);
+        assert!(machine.read(&good.replace(&expected, &other)).is_err());
+        assert!(machine.read(&good.replace("4101", "4400")).is_err());
+        assert!(machine.read("kernel=portable\n").is_err());
+    }
+}
