@@ -167,6 +167,15 @@ impl Increment {
         ((self.velocity_high as i64) << 32) | self.velocity_low as i64
     }
 
+    /// Upper bound of the amplitude (Q31) that this increment, made for the form
+    /// `from`, gives a mode with `coefficient` in the form `to`.
+    pub(crate) fn amplitude(&self, from: Group, coefficient: Coefficient, to: Group) -> u64 {
+        let mut state = State::rest(from.shift);
+        state.q = self.q;
+        state.set_velocity(state.velocity().wrapping_add(self.velocity()));
+        amplitude(&state, from, coefficient, to)
+    }
+
     /// The increment of a start `gain` times as strong.
     #[must_use]
     pub const fn scaled(&self, gain: Gain) -> Self {
@@ -204,6 +213,13 @@ impl Group {
 pub trait ModeBank<const M: usize>: Sized {
     /// Highest ceiling, Q31, that the bank can hold without wrapping.
     const HIGHEST_CEILING_Q31: u32;
+
+    /// What rounding can add to the sum of the amplitudes beyond the reserve of
+    /// `coefficients`, Q31.
+    fn further_reserve(coefficients: &Coefficients<M>) -> u64 {
+        let _ = coefficients;
+        0
+    }
 
     /// A bank at rest.
     fn at_rest(coefficients: &Coefficients<M>) -> Self;
@@ -407,11 +423,7 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
             .iter()
             .zip(increments)
             .map(|(resonator, (increment, (from, to)))| {
-                let mut state = State::rest(from.shift);
-                state.q = increment.q;
-                let rest = state.velocity();
-                state.set_velocity(rest.wrapping_add(increment.velocity()));
-                amplitude(&state, from, resonator.coefficient, to)
+                increment.amplitude(from, resonator.coefficient, to)
             })
             .fold(0, u64::saturating_add)
     }

@@ -195,6 +195,19 @@ impl<const M: usize> ModeBank<M> for NarrowBank<M> {
     /// |v| reaches 1.42 times the amplitude and has 32 bits: 0.7 of full scale.
     const HIGHEST_CEILING_Q31: u32 = FULL_SCALE_Q31 / 10 * 7;
 
+    /// Cutting e q off below pushes q by half a unit a frame: it swings by up to
+    /// 1/e units around its rest.
+    fn further_reserve(coefficients: &Coefficients<M>) -> u64 {
+        let modes = coefficients.as_slice().iter();
+        modes
+            .zip(forms(coefficients.groups()))
+            .map(|(coefficient, form)| {
+                let e = u64::from(coefficient.restoring.unsigned_abs().max(1));
+                (1_u64 << (32 + form.shift)) / e + 1
+            })
+            .sum()
+    }
+
     fn at_rest(coefficients: &Coefficients<M>) -> Self {
         let mut bank = Self {
             modes: Vec::new(),

@@ -361,7 +361,8 @@ impl<const M: usize> Onset<M> {
     ///
     /// # Errors
     /// `full_scale` outside [`bounds::FULL_SCALE`]; a sum of mode amplitudes
-    /// above the ceiling of `coefficients`; errors of [`ModeSeries::mode`].
+    /// above the ceiling of `coefficients`, taken from the integers and by up to
+    /// 2^−12 too high; errors of [`ModeSeries::mode`].
     pub fn prepare<L: Loss>(
         coefficients: &Coefficients<M>,
         series: &ModeSeries<L>,
@@ -371,31 +372,32 @@ impl<const M: usize> Onset<M> {
     ) -> Result<Self> {
         bounds::FULL_SCALE.check(full_scale)?;
         let mut increments = Vec::new();
-        let mut level = 0.0;
-        let mut forms = forms(&coefficients.groups);
-        for n in 1..=coefficients.coefficients.len() as u32 {
-            let Some(form) = forms.next() else { break };
+        let mut level = 0_u64;
+        let modes = coefficients.coefficients.iter();
+        for (n, (&coefficient, form)) in (1..).zip(modes.zip(forms(&coefficients.groups))) {
             let (mode, state) = heard(series, excitation, pickup, n)?;
             let a = state.displacement / full_scale;
             let c = state.quadrature(&mode) / full_scale;
+            if !(a.is_finite() && c.is_finite()) {
+                return Err(refused_level(libm::hypot(a, c), coefficients.ceiling));
+            }
             let sampled = Sampled::new(&mode, coefficients.sample_rate_hz)?;
             let velocity = sampled.velocity(a, c) * TWO_POW_31 * TWO_POW_32 * scale(form.shift);
-            // Casts saturate; the level below refuses whatever would not fit.
-            let _ = increments.push(Increment::new(
+            // Casts saturate; the level refuses whatever would not fit.
+            let increment = Increment::new(
                 libm::rint(a * TWO_POW_31) as i32,
                 libm::rint(velocity) as i64,
-            ));
-            // More for the rounding of the increment itself, and of e.
-            let amplitude = libm::hypot(a, c);
-            if amplitude.is_nan() {
-                return Err(refused_level(amplitude, coefficients.ceiling));
+            );
+            let _ = increments.push(increment);
+            // What the integers will do, and not what `series` says of them.
+            let amplitude = increment.amplitude(form, coefficient, form);
+            level = level.saturating_add(amplitude);
+            // A displacement that was cut off must not hide its size.
+            if libm::fabs(a) >= 1.0 {
+                return Err(refused_level(libm::fabs(a), coefficients.ceiling));
             }
-            level += amplitude * TWO_POW_31 * (1.0 + 1.0 / 1_048_576.0)
-                + 1.0
-                + 1.0 / libm::sin(sampled.angle);
         }
-        // A cast saturates.
-        Self::from_integers(increments, libm::ceil(level) as u64, coefficients)
+        Self::from_integers(increments, level, coefficients)
     }
 
     /// Refuses a `level` (Q31) above the ceiling of `coefficients`.

@@ -51,12 +51,31 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
     /// A string at rest, on the bank `K`.
     ///
     /// # Errors
-    /// A ceiling above what the bank can hold.
+    /// A ceiling above what the bank can hold; modes so low that the rounding of
+    /// the bank would take half of the ceiling.
     pub fn with_bank(coefficients: &Coefficients<M>) -> Result<Self> {
         if coefficients.share > K::HIGHEST_CEILING_Q31 {
             return Err(ceiling_error(coefficients.share, K::HIGHEST_CEILING_Q31));
         }
-        Ok(Self::on(K::at_rest(coefficients), coefficients))
+        let mut voice = Self::on(K::at_rest(coefficients), coefficients);
+        voice.ceiling = Self::ceiling_with(coefficients)?;
+        Ok(voice)
+    }
+
+    /// The ceiling of `coefficients`, less what this bank's rounding takes.
+    fn ceiling_with(coefficients: &Coefficients<M>) -> Result<u32> {
+        let reserve = K::further_reserve(coefficients);
+        let half = coefficients.ceiling / 2;
+        match u32::try_from(reserve) {
+            Ok(reserve) if reserve <= half => Ok(coefficients.ceiling - reserve),
+            _ => Err(Error::OutOfRange {
+                field: "reserve for the rounding of the bank",
+                unit: "of full scale",
+                value: reserve as f64 / f64::from(FULL_SCALE_Q31),
+                min: 0.0,
+                max: f64::from(half) / f64::from(FULL_SCALE_Q31),
+            }),
+        }
     }
 
     fn on(bank: K, coefficients: &Coefficients<M>) -> Self {
@@ -108,12 +127,13 @@ impl<const M: usize, K: ModeBank<M>> Voice<M, K> {
     /// that, the sound is made weaker, and the gain is returned.
     ///
     /// # Errors
-    /// A ceiling above the one the voice was made with; nothing is changed then.
+    /// A ceiling above the one the voice was made with, or modes too low for the
+    /// bank; nothing is changed then.
     pub fn set_coefficients(&mut self, coefficients: &Coefficients<M>) -> Result<Headroom> {
         if coefficients.share > self.share {
             return Err(ceiling_error(coefficients.share, self.share));
         }
-        self.ceiling = coefficients.ceiling;
+        self.ceiling = Self::ceiling_with(coefficients)?;
         self.slowest_decay_q64 = coefficients.slowest_decay_q64;
         self.fingerprint = coefficients.fingerprint;
         let ceiling = u64::from(self.ceiling);

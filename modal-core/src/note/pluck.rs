@@ -263,8 +263,10 @@ fn displaced(mode: &ModeQ, a: i32) -> (Increment, u32) {
         rest >> (2 - mode.shift)
     };
     let step = (mode.pull / 2) as i32 + rest;
-    let step = step + ((i64::from(step) * i64::from(grown(mode.loss >> 4))) >> 32) as i32;
-    let increment = Increment::new(a, (i64::from(a) * i64::from(step)) >> 1);
+    // Just below the end of a shift this passes 2^31.
+    let step = i64::from(step);
+    let step = step + ((step * i64::from(grown(mode.loss >> 4))) >> 32);
+    let increment = Increment::new(a, (i64::from(a) * step) >> 1);
     // c = s a/θ, and s < θ/4: √(1 + 1/16) is below 33/32. Where s < θ/64,
     // √(1 + 2^−12) is below 1 + 2^−13; s² in Q40 against θ²/8 in Q32.
     let level = a.unsigned_abs();
