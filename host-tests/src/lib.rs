@@ -5,4 +5,5 @@
 pub mod measure;
 pub mod performance;
 pub mod reference;
+pub mod timeline;
 pub mod tolerance;

@@ -10,6 +10,7 @@ use modal_core::{Loss, Result, TwosComplement16};
 
 use crate::measure::from_q31;
 use crate::reference::{Damped, Wire};
+use crate::timeline::{Event, perform};
 
 /// What the integers play from a log.
 pub struct Played {
@@ -103,29 +104,23 @@ fn mode_of_string<const S: usize, const M: usize>(
     if ringing.angular >= 0.9 * std::f64::consts::PI * rate_hz {
         return;
     }
-    let mut motion = Damped {
-        a: 0.0,
-        c: 0.0,
-        ..ringing
-    };
-    let mut from = 0;
-    for event in events {
-        let until = (event.frame as usize).min(signal.len());
-        motion.add_to(&mut signal[from..until], rate_hz);
-        motion = motion.moved_to((until - from) as f64 / rate_hz);
-        from = until;
-        motion = match event.kind {
-            Kind::Pluck => {
-                let gain = f64::from(event.gain.q15()) / 32_768.0 / full_scale_m;
-                Damped {
-                    a: motion.a + gain * ringing.a,
-                    c: motion.c + gain * ringing.c,
-                    ..motion
+    let events: Vec<(usize, Event)> = events
+        .iter()
+        .map(|event| {
+            let what = match event.kind {
+                Kind::Pluck => {
+                    let gain = f64::from(event.gain.q15()) / 32_768.0 / full_scale_m;
+                    Event::Start(Damped {
+                        a: gain * ringing.a,
+                        c: gain * ringing.c,
+                        ..ringing
+                    })
                 }
-            }
-            Kind::Release => motion.with_losses(&ringing, 1.0 / rate_hz),
-            Kind::Mute => motion.with_losses(&muted, 1.0 / rate_hz),
-        };
-    }
-    motion.add_to(&mut signal[from..], rate_hz);
+                Kind::Release => Event::Exchange(ringing),
+                Kind::Mute => Event::Exchange(muted),
+            };
+            (event.frame as usize, what)
+        })
+        .collect();
+    perform(&ringing, &events, signal, rate_hz);
 }

@@ -34,7 +34,7 @@ fn check<T>(result: Result<T, Error>) -> Result<Option<T>, TestCaseError> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(4_000))]
+    #![proptest_config(support::cases(4_000))]
 
     #[test]
     fn constructors_take_any_bits(a in any_number(), b in any_number(), c in any_number(), d in any_number()) {

@@ -64,7 +64,7 @@ fn error(scene: &Scene, coefficients: &Coefficients<MODES>) -> f64 {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(200))]
+    #![proptest_config(support::cases(200))]
 
     #[test]
     fn the_engine_follows_the_closed_form(scene in scene()) {

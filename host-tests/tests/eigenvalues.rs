@@ -4,6 +4,8 @@
 //! eigensolver of a general linear-algebra library.
 #![allow(clippy::expect_used, reason = "a test may fail")]
 
+mod support;
+
 use std::f64::consts::PI;
 
 use modal_core::{Ends, StringSpec};
@@ -81,7 +83,7 @@ fn frequencies(b: f64, ends: Ends, elements: usize) -> Vec<f64> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(12))]
+    #![proptest_config(support::cases(12))]
 
     #[test]
     fn the_iteration_solves_the_discretised_string(

@@ -3,52 +3,11 @@
 
 mod support;
 
-use modal_core::bank::Resonator;
-use modal_core::{Coefficients, Headroom, Instrument, ModeBank, ModeSeries, TwoT60, Voice};
+use modal_core::{
+    Coefficients, Headroom, Instrument, ModeBank, ModeSeries, Onset, TwoT60, Voice, bounds,
+};
 use proptest::prelude::*;
-use support::{MODES, Scene, scene};
-
-/// The displacements and one-frame steps of all modes as they should be without
-/// a limit on their size: wide integers beside the bank's own.
-struct Wide {
-    modes: Vec<(i128, i128)>,
-}
-
-impl Wide {
-    fn of(resonators: &[Resonator]) -> Self {
-        let modes = resonators
-            .iter()
-            .map(|one| (i128::from(one.state.q), i128::from(one.state.velocity())))
-            .collect();
-        Self { modes }
-    }
-
-    /// One frame of every mode; the sum that is heard.
-    fn step(&mut self, voice: &Voice<MODES>, odd: bool) -> i128 {
-        let forms: Vec<_> = voice
-            .bank()
-            .groups()
-            .iter()
-            .flat_map(|group| std::iter::repeat_n(*group, usize::from(group.modes)))
-            .collect();
-        let mut heard = 0;
-        for (index, (q, velocity)) in self.modes.iter_mut().enumerate() {
-            let coefficient = voice.bank().resonators()[index].coefficient;
-            let form = forms[index];
-            heard += if form.folded && odd { -*q } else { *q };
-            let high = *velocity >> 32;
-            *velocity +=
-                i128::from(coefficient.damping) * high + i128::from(coefficient.restoring) * *q;
-            let high = *velocity >> 32;
-            *q += if form.shift >= 0 {
-                high >> form.shift
-            } else {
-                high << -form.shift
-            };
-        }
-        heard
-    }
-}
+use support::{MODES, Scene, legal, scene, wide};
 
 fn muted(scene: &Scene) -> Coefficients<MODES> {
     let loss = TwoT60::new(50.0, 0.15, 5_000.0, 0.05).expect("a loss");
@@ -57,58 +16,84 @@ fn muted(scene: &Scene) -> Coefficients<MODES> {
         .expect("muted")
 }
 
-proptest! {
-    #![proptest_config(ProptestConfig::with_cases(300))]
+/// What is done to a voice, and for how many blocks it sounds then.
+fn gestures(most: usize) -> impl Strategy<Value = Vec<(u8, usize, u8)>> {
+    prop::collection::vec((0_u8..5, 0_usize..16, 0_u8..4), 1..most)
+}
 
-    /// Plucks at the worst moments, mutes and releases: the bank, computed with
-    /// 128 bits, never leaves 32, and never passes its ceiling.
+/// Starts (three of five gestures) and exchanges of coefficients at will.
+fn play<const M: usize>(
+    coefficients: &[Coefficients<M>],
+    onsets: &[Onset<M>],
+    gestures: &[(u8, usize, u8)],
+) -> Result<(), TestCaseError> {
+    let Some(first) = coefficients.first() else {
+        return Ok(());
+    };
+    let mut voice = Voice::new(first);
+    for &(gesture, which, blocks) in gestures {
+        let onset = onsets.get(which % onsets.len().max(1));
+        match (gesture, onset) {
+            (0..=2, Some(onset)) => {
+                let _ = voice.superpose(onset);
+            }
+            _ => {
+                let other = &coefficients[which % coefficients.len()];
+                let _ = voice.set_coefficients(other).expect("the same share");
+            }
+        }
+        for _ in 0..=blocks {
+            wide::render(&mut voice)?;
+        }
+    }
+    Ok(())
+}
+
+proptest! {
+    #![proptest_config(support::cases(300))]
+
+    /// Plucks at the worst moments, mutes and releases.
     #[test]
-    fn wide_integers_agree_with_the_bank(
-        scene in scene(),
-        gestures in prop::collection::vec((0_u8..5, 0_u8..4), 1..12),
-    ) {
+    fn a_string_of_an_instrument_never_wraps(scene in scene(), gestures in gestures(12)) {
         let Ok(ringing) = scene.coefficients() else {
             return Err(TestCaseError::reject("decays too slow for the ceiling"));
         };
-        let muted = muted(&scene);
         let full_scale = scene.full_scale(&ringing, 0.999);
         let onset = scene.onset(&ringing, full_scale);
-        let mut voice = Voice::new(&ringing);
-        let share = i128::from(ringing.share_q31());
-        for (gesture, blocks) in gestures {
-            match gesture {
-                0..=2 => {
-                    let _ = voice.superpose(&onset);
-                }
-                3 => {
-                    let _ = voice.set_coefficients(&muted).expect("the same share");
-                }
-                _ => {
-                    let _ = voice.set_coefficients(&ringing).expect("the same share");
-                }
-            }
-            for _ in 0..=blocks {
-                let mut wide = Wide::of(voice.bank().resonators());
-                let sounding = voice.bank().sounding();
-                wide.modes.truncate(sounding);
-                let mut block = [0; 32];
-                let before = voice.clone();
-                voice.render(&mut block);
-                if before.is_silent() {
-                    continue;
-                }
-                for (frame, got) in block.into_iter().enumerate() {
-                    let heard = wide.step(&before, frame % 2 == 1);
-                    prop_assert_eq!(i128::from(got), heard, "frame {}", frame);
-                    prop_assert!(heard.abs() <= share, "{} above {}", heard, share);
-                }
-                for (q, velocity) in wide.modes {
-                    prop_assert!(i32::try_from(q).is_ok());
-                    prop_assert!(i64::try_from(velocity).is_ok());
-                }
-            }
-            prop_assert!(voice.bound_q31() <= u64::from(voice.ceiling_q31()) + 1);
+        play(&[ringing, muted(&scene)], &[onset], &gestures)?;
+    }
+
+    /// Any strings, any plucks, each prepared for and played under the coefficients
+    /// of the others.
+    #[test]
+    fn no_legal_string_ever_wraps(
+        strings in prop::collection::vec(legal::played(8), 1..4),
+        sample_rate_hz in legal::within(&bounds::SAMPLE_RATE_HZ),
+        ceiling in legal::within(&bounds::CEILING),
+        gestures in gestures(20),
+    ) {
+        let (mut coefficients, mut onsets) = (Vec::new(), Vec::new());
+        for string in &strings {
+            coefficients.extend(string.coefficients::<8>(sample_rate_hz, ceiling));
         }
+        for string in &strings {
+            onsets.extend(coefficients.iter().filter_map(|any| string.onset(any).ok()));
+        }
+        play(&coefficients, &onsets, &gestures)?;
+    }
+
+    /// The same, prepared in integers.
+    #[test]
+    #[ignore = "a folded mode that dies in 200 frames overflows in note::pluck::displaced"]
+    fn no_integer_note_ever_wraps(
+        strings in prop::collection::vec(legal::played(8), 1..4),
+        sample_rate_hz in legal::within(&bounds::SAMPLE_RATE_HZ),
+        ceiling in legal::within(&bounds::CEILING),
+        gestures in gestures(20),
+    ) {
+        let notes = strings.iter().filter_map(|string| string.note::<8>(sample_rate_hz, ceiling).ok());
+        let (coefficients, onsets): (Vec<_>, Vec<_>) = notes.unzip();
+        play(&coefficients, &onsets, &gestures)?;
     }
 
     /// The running bound is never below what really sounds.
@@ -137,7 +122,7 @@ proptest! {
 /// louder one there, and has to be counted as that.
 #[test]
 fn a_start_for_other_coefficients_is_counted_as_what_it_is() {
-    use modal_core::{Onset, RoundedPluck, StringSpec, VelocityPickup};
+    use modal_core::{RoundedPluck, StringSpec, VelocityPickup};
     let series = |pitch_hz: f64, t60_s: f64| {
         let string = StringSpec::tuned(0.6, pitch_hz, 1.0e-3, 0.0).expect("a string");
         let loss = TwoT60::new(100.0, t60_s, 5_000.0, 0.5 * t60_s).expect("a loss");
@@ -164,18 +149,7 @@ fn a_start_for_other_coefficients_is_counted_as_what_it_is() {
                 sum <= (voice.bound_q31() + 1_000) * 4_097 / 4_096,
                 "{pitch_hz} {t60_s}"
             );
-            let mut wide = Wide::of(voice.bank().resonators());
-            wide.modes.truncate(voice.bank().sounding());
-            let before = voice.clone();
-            let mut block = [0; 32];
-            voice.render(&mut block);
-            for (frame, got) in block.into_iter().enumerate() {
-                assert_eq!(
-                    i128::from(got),
-                    wide.step(&before, frame % 2 == 1),
-                    "{pitch_hz} {t60_s}"
-                );
-            }
+            wide::render(&mut voice).expect("nothing wraps");
         }
     }
 }
@@ -196,10 +170,7 @@ fn a_lossy_neighbour_does_not_spoil_a_mode() {
         let series = ModeSeries::new(string, Alternating);
         let coefficients =
             Coefficients::<8>::prepare(&series, 6, 48_000.0, ceiling).expect("coefficients");
-        let forms = coefficients
-            .groups()
-            .iter()
-            .flat_map(|group| std::iter::repeat_n(*group, usize::from(group.modes)));
+        let forms = wide::forms(coefficients.groups());
         for ((coefficient, form), n) in coefficients.as_slice().iter().zip(forms).zip(1..) {
             let mode = series.mode(n).expect("a mode");
             let k = -f64::from(coefficient.damping) / 2.0_f64.powi(32);

@@ -2,6 +2,8 @@
 //! Kutta, order 4), against the closed forms of contact and push.
 #![allow(clippy::expect_used, reason = "a test may fail")]
 
+mod support;
+
 use std::f64::consts::PI;
 
 use modal_core::excitation::{ContactStrike, SlowPush};
@@ -73,7 +75,7 @@ fn agree(
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(60))]
+    #![proptest_config(support::cases(60))]
 
     #[test]
     fn contact_leaves_the_string_as_the_solver_says(

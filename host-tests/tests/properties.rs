@@ -16,7 +16,7 @@ fn close(a: f64, b: f64) -> bool {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(200))]
+    #![proptest_config(support::cases(200))]
 
     #[test]
     fn starts_add(string in string(), loss in losses(), a in pluck(), b in pluck(), n in 1_u32..200) {

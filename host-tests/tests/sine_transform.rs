@@ -31,7 +31,7 @@ fn transform(samples: &[f64]) -> Vec<f64> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(48))]
+    #![proptest_config(support::cases(48))]
 
     #[test]
     fn any_samples(samples in prop::collection::vec(-1.0..1.0, 1..200)) {

@@ -72,7 +72,7 @@ fn exact_points() {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig::with_cases(64))]
+    #![proptest_config(support::cases(64))]
 
     #[test]
     fn modes_are_waves_within_the_bound_of_the_tail(

@@ -1,4 +1,5 @@
-//! Random strings, plucks and pickups from the bounds of `modal-core`.
+//! Random strings, plucks and pickups from the bounds of `modal-core`: here those
+//! of instruments, in [`legal`] whatever the bounds allow.
 #![allow(
     unreachable_pub,
     clippy::expect_used,
@@ -6,12 +7,27 @@
 )]
 #![allow(dead_code, reason = "each test file uses a part")]
 
+pub mod legal;
+pub mod wide;
+
 use modal_core::bounds::{self, Bound};
 use modal_core::{
     Coefficients, DisplacementPickup, ModeSeries, Onset, PickupWeights, RoundedPluck, StringSpec,
     TwoT60, plan,
 };
 use proptest::prelude::*;
+
+/// This many cases, or what the usual variable PROPTEST_CASES says: a longer search.
+pub fn cases(usual: u32) -> ProptestConfig {
+    let asked = std::env::var_os("PROPTEST_CASES").is_some();
+    let default = ProptestConfig::default();
+    ProptestConfig {
+        cases: if asked { default.cases } else { usual },
+        // A failure prints its input; no files beside the tests.
+        failure_persistence: None,
+        ..default
+    }
+}
 
 /// A value of `bound` between `from` and `to` of its range, evenly over the
 /// logarithm.
