@@ -15,6 +15,7 @@ mod cycles;
 mod figures;
 mod picture;
 mod play;
+mod size;
 mod tones;
 
 mod hygiene;
@@ -66,6 +67,9 @@ enum Command {
         #[arg(long)]
         accept: bool,
     },
+    /// Print flash and static memory of the smallest program and of the
+    /// demonstration.
+    Size,
     /// Check everything: format, lints, documentation, tests, cross-builds, the
     /// emulated board.
     Test {
@@ -82,6 +86,7 @@ fn main() -> ExitCode {
             play::run(&out, json.as_deref(), accept)
         }
         Command::Cycles { json, accept } => cycles::run(json.as_deref(), accept),
+        Command::Size => size::run(),
         Command::Test { only } => test::run(only.as_deref().unwrap_or_default()),
     };
     match done {
