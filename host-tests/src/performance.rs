@@ -110,11 +110,7 @@ fn mode_of_string<const S: usize, const M: usize>(
             let what = match event.kind {
                 Kind::Pluck => {
                     let gain = f64::from(event.gain.q15()) / 32_768.0 / full_scale_m;
-                    Event::Start(Damped {
-                        a: gain * ringing.a,
-                        c: gain * ringing.c,
-                        ..ringing
-                    })
+                    Event::Start(ringing.scaled(gain))
                 }
                 Kind::Release => Event::Exchange(ringing),
                 Kind::Mute => Event::Exchange(muted),

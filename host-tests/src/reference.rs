@@ -88,6 +88,16 @@ impl Damped {
         }
     }
 
+    /// The same motion, `gain` times as large.
+    #[must_use]
+    pub fn scaled(&self, gain: f64) -> Self {
+        Self {
+            a: gain * self.a,
+            c: gain * self.c,
+            ..*self
+        }
+    }
+
     /// q(t).
     #[must_use]
     pub fn at(&self, t: f64) -> f64 {

@@ -4,41 +4,13 @@
 mod support;
 
 use host_tests::measure::{error_dbfs, from_q31, tone_error};
-use host_tests::reference::{Damped, Wire};
+use host_tests::reference::Damped;
 use host_tests::tolerance;
 use modal_core::{Coefficients, Loss, Onset, VelocityPickup, Voice};
 use proptest::prelude::*;
-use support::{Alone, Everywhere, MODES, Scene, scene};
+use support::{Alone, Everywhere, MODES, Scene, closed, scene, wire};
 
 const BLOCK: usize = 32;
-
-fn wire(scene: &Scene) -> Wire {
-    let string = scene.series.string();
-    Wire {
-        length_m: string.length_m(),
-        tension_n: string.tension_n(),
-        density_kg_per_m: string.linear_density_kg_per_m(),
-        stiffness_n_m2: string.bending_stiffness_n_m2(),
-    }
-}
-
-/// Every mode of the pluck by the formulas of `host_tests::reference`.
-fn closed(scene: &Scene, modes: usize, full_scale: f64) -> Vec<Damped> {
-    let wire = wire(scene);
-    (1..=modes as u32)
-        .map(|n| {
-            let hz = wire.frequency_hz(n);
-            let decay = scene
-                .series
-                .loss()
-                .decay_rate_per_s(n, hz, scene.series.string());
-            let pluck = &scene.pluck;
-            let shape = wire.pluck(n, pluck.place(), pluck.height_m(), pluck.width_m());
-            let heard = wire.heard(n, scene.pickup.place(), scene.pickup.aperture_m());
-            Damped::new(hz, decay, shape * heard / full_scale, 0.0)
-        })
-        .collect()
-}
 
 fn render(voice: &mut Voice<MODES>, frames: usize) -> Vec<f64> {
     let mut signal = Vec::new();

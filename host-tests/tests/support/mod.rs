@@ -10,10 +10,11 @@
 pub mod legal;
 pub mod wide;
 
+use host_tests::reference::{Damped, Wire};
 use modal_core::bounds::{self, Bound};
 use modal_core::{
-    Coefficients, DisplacementPickup, ModeSeries, Onset, PickupWeights, RoundedPluck, StringSpec,
-    TwoT60, plan,
+    Coefficients, DisplacementPickup, Loss, ModeSeries, Onset, PickupWeights, RoundedPluck,
+    StringSpec, TwoT60, plan,
 };
 use proptest::prelude::*;
 
@@ -131,12 +132,12 @@ pub fn scene() -> impl Strategy<Value = Scene> {
 
 impl Scene {
     pub fn coefficients(&self) -> modal_core::Result<Coefficients<MODES>> {
-        Coefficients::prepare(
-            &self.series,
-            MODES as u32,
-            self.sample_rate_hz,
-            self.ceiling,
-        )
+        self.first(MODES as u32)
+    }
+
+    /// Coefficients of no more than the first `modes` modes.
+    pub fn first(&self, modes: u32) -> modal_core::Result<Coefficients<MODES>> {
+        Coefficients::prepare(&self.series, modes, self.sample_rate_hz, self.ceiling)
     }
 
     /// The heard level that is full scale if the pluck is `share` of the ceiling.
@@ -156,6 +157,35 @@ impl Scene {
         )
         .expect("it was scaled to fit")
     }
+}
+
+/// The string of `scene` for the reference.
+pub fn wire(scene: &Scene) -> Wire {
+    let string = scene.series.string();
+    Wire {
+        length_m: string.length_m(),
+        tension_n: string.tension_n(),
+        density_kg_per_m: string.linear_density_kg_per_m(),
+        stiffness_n_m2: string.bending_stiffness_n_m2(),
+    }
+}
+
+/// Every mode of the pluck by the formulas of `host_tests::reference`.
+pub fn closed(scene: &Scene, modes: usize, full_scale: f64) -> Vec<Damped> {
+    let wire = wire(scene);
+    (1..=modes as u32)
+        .map(|n| {
+            let hz = wire.frequency_hz(n);
+            let decay = scene
+                .series
+                .loss()
+                .decay_rate_per_s(n, hz, scene.series.string());
+            let pluck = &scene.pluck;
+            let shape = wire.pluck(n, pluck.place(), pluck.height_m(), pluck.width_m());
+            let heard = wire.heard(n, scene.pickup.place(), scene.pickup.aperture_m());
+            Damped::new(hz, decay, shape * heard / full_scale, 0.0)
+        })
+        .collect()
 }
 
 /// Hears every mode alike.
