@@ -14,3 +14,6 @@ pub const PITCH_CENTS: f64 = 0.01;
 pub const T60: f64 = 1.0e-3;
 /// Excess of the converted words' error over an ideal dithered converter, dB.
 pub const CONVERTER_DB: f64 = 1.0;
+/// By how much a control has to pass [`ENGINE_DBFS`], dB: twice the error that is
+/// allowed, so that no luck lets it through.
+pub const CONTROL_MARGIN_DB: f64 = 6.0;

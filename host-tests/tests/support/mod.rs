@@ -213,3 +213,16 @@ impl modal_core::Excitation for Alone {
         }
     }
 }
+
+/// Starts every mode alike, at 1.
+#[derive(Clone, Copy, Debug)]
+pub struct Alike;
+
+impl modal_core::Excitation for Alike {
+    fn mode(&self, _: &modal_core::Mode, _: &StringSpec) -> modal_core::ModalState {
+        modal_core::ModalState {
+            displacement: 1.0,
+            velocity: 0.0,
+        }
+    }
+}
