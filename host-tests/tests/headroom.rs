@@ -84,7 +84,6 @@ proptest! {
 
     /// The same, prepared in integers.
     #[test]
-    #[ignore = "a folded mode that dies in 200 frames overflows in note::pluck::displaced"]
     fn no_integer_note_ever_wraps(
         strings in prop::collection::vec(legal::played(8), 1..4),
         sample_rate_hz in legal::within(&bounds::SAMPLE_RATE_HZ),

@@ -250,11 +250,12 @@ fn displaced(mode: &ModeQ, a: i32) -> (Increment, u32) {
     } else {
         slack(mode.z)
     };
-    let slip = mul_high(mode.decay, slack) as i32;
+    let slip = i64::from(mul_high(mode.decay, slack));
+    let (decay, loss) = (i64::from(mode.decay), i64::from(mode.loss));
     let rest = if mode.folded {
-        slip - (mode.decay / 2 + mode.loss / 2) as i32
+        slip - (decay + loss) / 2
     } else {
-        (mode.decay - mode.loss) as i32 / 2 - slip
+        (decay - loss) / 2 - slip
     };
     // To Q(33+S).
     let rest = if mode.shift > 2 {
@@ -262,9 +263,8 @@ fn displaced(mode: &ModeQ, a: i32) -> (Increment, u32) {
     } else {
         rest >> (2 - mode.shift)
     };
-    let step = (mode.pull / 2) as i32 + rest;
     // Just below the end of a shift this passes 2^31.
-    let step = i64::from(step);
+    let step = i64::from(mode.pull / 2) + rest;
     let step = step + ((step * i64::from(grown(mode.loss >> 4))) >> 32);
     let increment = Increment::new(a, (i64::from(a) * step) >> 1);
     // c = s a/θ, and s < θ/4: √(1 + 1/16) is below 33/32. Where s < θ/64,
