@@ -88,6 +88,12 @@ impl Damped {
         }
     }
 
+    /// Time in which the amplitude falls by 60 dB, in s.
+    #[must_use]
+    pub fn t60_s(&self) -> f64 {
+        1_000.0_f64.ln() / self.decay
+    }
+
     /// The same motion, `gain` times as large.
     #[must_use]
     pub fn scaled(&self, gain: f64) -> Self {

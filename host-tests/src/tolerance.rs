@@ -17,3 +17,21 @@ pub const CONVERTER_DB: f64 = 1.0;
 /// By how much a control has to pass [`ENGINE_DBFS`], dB: twice the error that is
 /// allowed, so that no luck lets it through.
 pub const CONTROL_MARGIN_DB: f64 = 6.0;
+/// Shortest T60 of a mode, s, of which pitch and T60 are held to anything: what is
+/// gone sooner has too few frames above the noise of rounding.
+pub const SHORTEST_T60_S: f64 = 0.02;
+/// Error of a note prepared in integers within the bounds, otherwise as
+/// [`ANY_STRING_DBFS`], dBFS: the squared angle and σ T are rounded to 2^(−56) and
+/// 2^(−36) before they are multiplied by n².
+pub const INTEGER_NOTE_DBFS: f64 = -105.0;
+/// The same on the bank for small cores, dBFS: the noise of the 12-bit converter
+/// that such a core feeds.
+pub const NARROW_DBFS: f64 = -72.2;
+/// Shortest T60 of a mode, s, that is looked at on that bank: it decays in steps of
+/// 32 frames, and a fit needs tens of them.
+pub const NARROW_SHORTEST_T60_S: f64 = 0.05;
+/// Pitch of a mode on that bank, cents: the steps smear a short tone; a twentieth
+/// of a cent is still beyond hearing.
+pub const NARROW_PITCH_CENTS: f64 = 0.05;
+/// T60 of a mode there, as a share: the same steps.
+pub const NARROW_T60: f64 = 0.02;

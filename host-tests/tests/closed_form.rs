@@ -3,7 +3,7 @@
 
 mod support;
 
-use host_tests::measure::{error_dbfs, from_q31, tone_error, tone_errors};
+use host_tests::measure::{error_dbfs, from_q31, tone_error};
 use host_tests::reference::Damped;
 use host_tests::tolerance;
 use modal_core::{
@@ -11,19 +11,7 @@ use modal_core::{
     VelocityPickup, Voice, kernel, plan,
 };
 use proptest::prelude::*;
-use support::{Alike, Alone, Everywhere, MODES, Scene, closed, scene, wire};
-
-const BLOCK: usize = 32;
-
-fn render(voice: &mut Voice<MODES>, frames: usize) -> Vec<f64> {
-    let mut signal = Vec::new();
-    while signal.len() < frames {
-        let mut block = [0; BLOCK];
-        voice.render(&mut block);
-        signal.extend(block.iter().map(|&frame| from_q31(frame)));
-    }
-    signal
-}
+use support::{Alone, BLOCK, Everywhere, MODES, Scene, all_modes, closed, render, scene, wire};
 
 /// Error of the first half second of `coefficients` against the closed form.
 fn error(scene: &Scene, coefficients: &Coefficients<MODES>) -> f64 {
@@ -138,28 +126,7 @@ proptest! {
         let Ok(coefficients) = scene.coefficients() else {
             return Err(TestCaseError::reject("decays too slow for the ceiling"));
         };
-        let modes = coefficients.modes() as u32;
-        let level = plan::l1_bound(&scene.series, &Alike, &Everywhere, modes).expect("modes");
-        let full_scale = 1.2 * level / scene.ceiling;
-        let onset = Onset::prepare(&coefficients, &scene.series, &Alike, &Everywhere, full_scale)
-            .expect("it fits");
-        let mut voice = Voice::new(&coefficients);
-        let _ = voice.superpose(&onset);
-        let expected: Vec<Damped> = (1..=modes)
-            .map(|n| {
-                let hz = wire(&scene).frequency_hz(n);
-                let decay = scene.series.loss().decay_rate_per_s(n, hz, scene.series.string());
-                Damped::new(hz, decay, 1.0, 0.0)
-            })
-            .collect();
-        // Ten periods of mode 1, as few frames as do.
-        let frames = (10.0 * scene.sample_rate_hz / wire(&scene).frequency_hz(1)).max(4_000.0);
-        let signal = render(&mut voice, frames as usize);
-        let errors = tone_errors(&signal, scene.sample_rate_hz, &expected).expect("modes lie apart");
-        for (n, error) in (1..).zip(errors) {
-            prop_assert!(error.cents.abs() <= tolerance::PITCH_CENTS, "mode {n}: {error:?}");
-            prop_assert!(error.t60.abs() <= tolerance::T60, "mode {n}: {error:?}");
-        }
+        all_modes(&scene, &coefficients)?;
     }
 }
 

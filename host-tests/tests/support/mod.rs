@@ -10,11 +10,13 @@
 pub mod legal;
 pub mod wide;
 
+use host_tests::measure::{from_q31, tone_errors};
 use host_tests::reference::{Damped, Wire};
+use host_tests::tolerance;
 use modal_core::bounds::{self, Bound};
 use modal_core::{
-    Coefficients, DisplacementPickup, Loss, ModeSeries, Onset, PickupWeights, RoundedPluck,
-    StringSpec, TwoT60, plan,
+    Coefficients, DisplacementPickup, Loss, ModeBank, ModeSeries, Onset, PickupWeights,
+    RoundedPluck, StringSpec, TwoT60, Voice, plan,
 };
 use proptest::prelude::*;
 
@@ -26,6 +28,8 @@ pub fn cases(usual: u32) -> ProptestConfig {
         cases: if asked { default.cases } else { usual },
         // A failure prints its input; no files beside the tests.
         failure_persistence: None,
+        // Rejected inputs grow with the search.
+        max_global_rejects: default.max_global_rejects.max(8 * default.cases),
         ..default
     }
 }
@@ -109,6 +113,18 @@ pub struct Scene {
 }
 
 pub const MODES: usize = 64;
+pub const BLOCK: usize = 32;
+
+/// What `voice` plays next: at least `frames` frames, whole blocks.
+pub fn render<K: ModeBank<MODES>>(voice: &mut Voice<MODES, K>, frames: usize) -> Vec<f64> {
+    let mut signal = Vec::new();
+    while signal.len() < frames {
+        let mut block = [0; BLOCK];
+        voice.render(&mut block);
+        signal.extend(block.map(from_q31));
+    }
+    signal
+}
 
 pub fn scene() -> impl Strategy<Value = Scene> {
     (
@@ -186,6 +202,44 @@ pub fn closed(scene: &Scene, modes: usize, full_scale: f64) -> Vec<Damped> {
             Damped::new(hz, decay, shape * heard / full_scale, 0.0)
         })
         .collect()
+}
+
+/// The tones of the modes of `scene`, started at 1.
+pub fn tones(scene: &Scene, modes: usize) -> Vec<Damped> {
+    let string = scene.series.string();
+    (1..=modes as u32)
+        .map(|n| {
+            let hz = wire(scene).frequency_hz(n);
+            let decay = scene.series.loss().decay_rate_per_s(n, hz, string);
+            Damped::new(hz, decay, 1.0, 0.0)
+        })
+        .collect()
+}
+
+/// All modes in one signal, equally loud, measured together: each has to be in
+/// tune and to die in time, whatever the others do.
+pub fn all_modes(scene: &Scene, coefficients: &Coefficients<MODES>) -> Result<(), TestCaseError> {
+    let expected = tones(scene, coefficients.modes());
+    let level = plan::l1_bound(&scene.series, &Alike, &Everywhere, expected.len() as u32);
+    let full_scale = 1.2 * level.expect("modes") / scene.ceiling;
+    let onset = Onset::prepare(coefficients, &scene.series, &Alike, &Everywhere, full_scale)
+        .expect("it fits");
+    let mut voice = Voice::new(coefficients);
+    let _ = voice.superpose(&onset);
+    // Sixteen periods of mode 1: a lone mode among 64 is little above the noise.
+    let periods = 16.0 * scene.sample_rate_hz / wire(scene).frequency_hz(1);
+    let signal = render(&mut voice, periods.max(8_000.0) as usize);
+    let errors = tone_errors(&signal, scene.sample_rate_hz, &expected).expect("modes lie apart");
+    for (n, (error, tone)) in (1..).zip(errors.into_iter().zip(&expected)) {
+        if tone.t60_s() > tolerance::SHORTEST_T60_S {
+            prop_assert!(
+                error.cents.abs() <= tolerance::PITCH_CENTS,
+                "mode {n}: {error:?}"
+            );
+            prop_assert!(error.t60.abs() <= tolerance::T60, "mode {n}: {error:?}");
+        }
+    }
+    Ok(())
 }
 
 /// Hears every mode alike.
