@@ -1,7 +1,7 @@
 //! DAC words against an ideal converter with triangular dither.
 #![allow(clippy::expect_used, clippy::panic, reason = "a test may fail")]
 
-use host_tests::measure::{from_q31, power_db};
+use host_tests::measure::{Spectrum, from_q31, power_db};
 use host_tests::tolerance;
 use modal_core::{Converter, DacFormat, TwosComplement16, Unipolar12};
 
@@ -36,12 +36,35 @@ fn errors_are_those_of_triangular_dither() {
         let mix = sine(amplitude, 400_000);
         let signed = |word: u16| f64::from(word.cast_signed());
         let (mean, power) = error_in_places::<TwosComplement16>(&mix, signed);
-        assert!(mean.abs() < 5.0e-3, "{mean}");
-        assert!((power_db(power) - power_db(0.25)).abs() < tolerance::CONVERTER_DB / 20.0);
+        assert!(mean.abs() < tolerance::DITHER_MEAN, "{mean}");
+        assert!((power_db(power) - power_db(0.25)).abs() < tolerance::DITHER_DB);
         let unipolar = |word: u16| f64::from(word) - 2_048.0;
         let (mean, power) = error_in_places::<Unipolar12>(&mix, unipolar);
-        assert!(mean.abs() < 5.0e-3, "{mean}");
-        assert!((power_db(power) - power_db(0.25)).abs() < tolerance::CONVERTER_DB / 20.0);
+        assert!(mean.abs() < tolerance::DITHER_MEAN, "{mean}");
+        assert!((power_db(power) - power_db(0.25)).abs() < tolerance::DITHER_DB);
+    }
+}
+
+/// The error is noise: no bin of its spectrum stands out, and none is weaker below
+/// than above, with a sine, a slow ramp and silence that is not called so.
+#[test]
+fn errors_are_white() {
+    let ramp: Vec<i32> = (0..400_000).map(|n| n << 4).collect();
+    for mix in [sine(0.5, 400_000), ramp, vec![0; 400_000]] {
+        let mut words = vec![0; mix.len()];
+        Converter::<TwosComplement16>::new(11).convert(&mix, &mut words, false);
+        let errors: Vec<f64> = mix
+            .iter()
+            .zip(&words)
+            .map(|(&frame, &word)| f64::from(word.cast_signed()) - 32_768.0 * from_q31(frame))
+            .collect();
+        let spectrum = Spectrum::of(&errors, 1_024);
+        // Each bin but the two ends holds as much.
+        let even = 0.25 / 512.0;
+        for &power in &spectrum.powers()[1..512] {
+            let level = power_db(power / even);
+            assert!(level.abs() < tolerance::DITHER_TONE_DB, "{level:.2} dB");
+        }
     }
 }
 

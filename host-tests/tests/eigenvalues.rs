@@ -8,6 +8,7 @@ mod support;
 
 use std::f64::consts::PI;
 
+use host_tests::tolerance;
 use modal_core::{Ends, StringSpec};
 use nalgebra::{Cholesky, DMatrix, SymmetricEigen};
 use proptest::prelude::*;
@@ -93,14 +94,12 @@ proptest! {
         let b = f64::powf(10.0, exponent);
         let string = StringSpec::new(1.0, 100.0, 1.0e-2, 100.0 * b / (PI * PI)).expect("a string");
         let string = string.between(ends);
-        prop_assert!((string.inharmonicity() / b - 1.0).abs() < 1e-12);
+        prop_assert!((string.inharmonicity() / b - 1.0).abs() < tolerance::ROUNDING);
         let found = frequencies(b, ends, 150);
         for n in 1..=10_u32 {
             let ours = string.frequency_hz(n) / string.ideal_fundamental_hz();
             let error = ours / found[n as usize - 1] - 1.0;
-            // What 150 elements and the rounding of 1/h³ leave; clamping an end
-            // moves the pitch by 1e-3 and more.
-            prop_assert!(error.abs() < 2e-5, "B {b} {ends:?} mode {n}: {error:e}");
+            prop_assert!(error.abs() < tolerance::ELEMENTS, "B {b} {ends:?} mode {n}: {error:e}");
         }
     }
 
@@ -115,6 +114,6 @@ proptest! {
         let Ok(string) = StringSpec::tuned_between(ends, 0.65, pitch, density, stiffness) else {
             return Err(TestCaseError::reject("tension out of range"));
         };
-        prop_assert!((string.frequency_hz(1) / pitch - 1.0).abs() < 1e-12);
+        prop_assert!((string.frequency_hz(1) / pitch - 1.0).abs() < tolerance::ROUNDING);
     }
 }

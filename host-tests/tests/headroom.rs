@@ -3,6 +3,7 @@
 
 mod support;
 
+use host_tests::tolerance;
 use modal_core::{
     Coefficients, Headroom, Instrument, ModeBank, ModeSeries, Onset, TwoT60, Voice, bounds,
 };
@@ -112,8 +113,8 @@ proptest! {
         // Rounding can add to the amplitudes what the ceiling keeps in reserve.
         let reserve = u64::from(coefficients.share_q31() - coefficients.ceiling_q31());
         let level = voice.bank().level(None);
-        // `level` itself is up to 2^-12 too high.
-        prop_assert!(level <= (voice.bound_q31() + reserve) * 4_097 / 4_096 + 4 * MODES as u64);
+        let most = (voice.bound_q31() + reserve) as f64 * (1.0 + tolerance::LEVEL) + 4.0 * MODES as f64;
+        prop_assert!(level as f64 <= most, "{level} above {most}");
     }
 }
 
@@ -145,7 +146,7 @@ fn a_start_for_other_coefficients_is_counted_as_what_it_is() {
             let _ = voice.superpose(&onset);
             let sum = voice.bank().level(None);
             assert!(
-                sum <= (voice.bound_q31() + 1_000) * 4_097 / 4_096,
+                sum as f64 <= (voice.bound_q31() + 1_000) as f64 * (1.0 + tolerance::LEVEL),
                 "{pitch_hz} {t60_s}"
             );
             wide::render(&mut voice).expect("nothing wraps");
@@ -182,7 +183,10 @@ fn a_lossy_neighbour_does_not_spoil_a_mode() {
                 angle
             };
             let cents = 1_200.0 * (angle * 48_000.0 / mode.damped_angular()).log2();
-            assert!(cents.abs() < 0.01, "mode {n}: {cents} cents");
+            assert!(
+                cents.abs() <= tolerance::PITCH_CENTS,
+                "mode {n}: {cents} cents"
+            );
         }
     }
 }

@@ -6,6 +6,7 @@ mod support;
 
 use std::f64::consts::PI;
 
+use host_tests::tolerance;
 use modal_core::excitation::{ContactStrike, SlowPush};
 use modal_core::{ConstantT60, Excitation, ModalState, Mode, ModeSeries, StringSpec};
 use ode_solvers::{Rk4, System, Vector2};
@@ -70,7 +71,7 @@ fn agree(
 ) -> Result<(), TestCaseError> {
     let error = (ours.displacement - theirs.displacement).abs() * mode.angular()
         + (ours.velocity - theirs.velocity).abs();
-    prop_assert!(error < 1e-8 * scale, "{ours:?} {theirs:?}");
+    prop_assert!(error < tolerance::SOLVER * scale, "{ours:?} {theirs:?}");
     Ok(())
 }
 

@@ -2,6 +2,7 @@
 
 mod support;
 
+use host_tests::tolerance;
 use modal_core::excitation::{Corner, Of, Polyline, Profile, Strike, Tip};
 use modal_core::pickup::{Amplified, BridgeForce, End};
 use modal_core::{
@@ -12,7 +13,7 @@ use proptest::prelude::*;
 use support::{losses, pickup, pluck, string};
 
 fn close(a: f64, b: f64) -> bool {
-    (a - b).abs() <= 1e-12 * (a.abs() + b.abs()) + 1e-18
+    (a - b).abs() <= tolerance::ROUNDING * (a.abs() + b.abs()) + f64::MIN_POSITIVE
 }
 
 proptest! {
@@ -34,7 +35,7 @@ proptest! {
         let sum = weights.heard(&mode, both);
         let parts = (weights.heard(&mode, x), weights.heard(&mode, y));
         let scale = parts.0.displacement.abs() + parts.1.displacement.abs();
-        prop_assert!((sum.displacement - parts.0.displacement - parts.1.displacement).abs() <= 1e-12 * scale);
+        prop_assert!((sum.displacement - parts.0.displacement - parts.1.displacement).abs() <= tolerance::ROUNDING * scale);
     }
 
     #[test]
@@ -61,13 +62,13 @@ proptest! {
         let point = PointPluck::new(place, 1.0e-3).unwrap();
         let exact = point.mode(&mode, &soft).displacement;
         let nearly = point.mode(&mode, &stiff).displacement;
-        prop_assert!((exact - nearly).abs() <= 1e-8 * exact.abs() + 1e-15);
+        prop_assert!((exact - nearly).abs() <= tolerance::LIMIT * exact.abs() + tolerance::ROUNDING * 1.0e-3);
         for tip in [Tip::Even, Tip::RaisedCosine] {
             let narrow = RoundedPluck::new(place, 1.0e-3, 1.0e-7).unwrap().by(tip);
             let nearly = narrow.mode(&mode, &soft).displacement;
-            prop_assert!((exact - nearly).abs() <= 1e-8 * exact.abs() + 1e-15);
+            prop_assert!((exact - nearly).abs() <= tolerance::LIMIT * exact.abs() + tolerance::ROUNDING * 1.0e-3);
         }
-        prop_assert!((stiff.frequency_hz(n) / soft.frequency_hz(n) - 1.0).abs() < 1e-6);
+        prop_assert!((stiff.frequency_hz(n) / soft.frequency_hz(n) - 1.0).abs() < tolerance::LIMIT);
     }
 
     #[test]
@@ -96,7 +97,7 @@ proptest! {
             );
             sum += motion.at(t);
         }
-        prop_assert!(sum.abs() <= bound * (1.0 + 1e-12));
+        prop_assert!(sum.abs() <= bound * (1.0 + tolerance::ROUNDING));
     }
 
     #[test]
@@ -131,7 +132,7 @@ proptest! {
             let turn = std::f64::consts::TAU * f64::from(n) * phase;
             sum += weight * a * turn.cos() * x.sin() / x;
         }
-        prop_assert!((sum - expected).abs() < 2e-3 * (near + beyond), "{sum} {expected}");
+        prop_assert!((sum - expected).abs() < tolerance::SMOOTHED_SERIES * (near + beyond), "{sum} {expected}");
     }
 
     #[test]
@@ -150,7 +151,7 @@ proptest! {
         let line = Polyline::new(&corners, Of::Displacement).unwrap();
         let sum = (one, two).mode(&mode, &string);
         let shape = line.mode(&mode, &string);
-        prop_assert!((shape.displacement - sum.displacement).abs() < 1e-15);
+        prop_assert!((shape.displacement - sum.displacement).abs() < 0.01 * tolerance::ROUNDING);
         prop_assert_eq!(shape.velocity, 0.0);
         let start: ModalState = shape;
         prop_assert!(start.phase(&mode).is_finite());

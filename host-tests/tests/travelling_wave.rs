@@ -4,6 +4,7 @@
 
 mod support;
 
+use host_tests::tolerance;
 use modal_core::energy::PluckTail;
 use modal_core::{ConstantT60, Excitation, ModeSeries, PointPluck, StringSpec};
 use proptest::prelude::*;
@@ -65,7 +66,7 @@ fn exact_points() {
     for (place, points) in [(0.25, quarter), (0.2, fifth), (2.0 / 7.0, sevenths)] {
         let tail = PluckTail::after(2_000, place).expect("a place").largest;
         for (x, time, exact) in points {
-            assert!((waves(x, time, place) - exact).abs() < 1e-12);
+            assert!((waves(x, time, place) - exact).abs() < tolerance::ROUNDING);
             assert!((modes(x, time, place, 2_000) - exact).abs() <= tail);
         }
     }
@@ -89,7 +90,7 @@ proptest! {
     ) {
         let now = modes(x, time, place, 100);
         let later = modes(1.0 - x, time + 1.0, place, 100);
-        prop_assert!((now + later).abs() < 1e-9);
+        prop_assert!((now + later).abs() < tolerance::SUM_OF_MODES);
     }
 
     #[test]
@@ -100,7 +101,8 @@ proptest! {
         let here = PointPluck::new(place, 0.01).expect("a pluck").mode(&mode, &string);
         let there = PointPluck::new(1.0 - place, 0.01).expect("a pluck").mode(&mode, &string);
         let sign = if n % 2 == 1 { 1.0 } else { -1.0 };
-        let size = here.displacement.abs().max(1e-12);
-        prop_assert!((here.displacement - sign * there.displacement).abs() < 1e-10 * size + 1e-15);
+        let largest = 2.0 * 0.01 / (std::f64::consts::PI.powi(2) * place * (1.0 - place));
+        let error = here.displacement - sign * there.displacement;
+        prop_assert!(error.abs() < tolerance::ROUNDING * largest);
     }
 }
