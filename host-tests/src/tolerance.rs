@@ -20,6 +20,10 @@ pub const CONTROL_MARGIN_DB: f64 = 6.0;
 /// Shortest T60 of a mode, s, of which pitch and T60 are held to anything: what is
 /// gone sooner has too few frames above the noise of rounding.
 pub const SHORTEST_T60_S: f64 = 0.02;
+/// Fewest radians of a mode within its T60, twenty periods, of which the same is
+/// asked when it is one of 64 and at −60 dB: the bank rests up to k/(2e) units off
+/// zero, which bends a tone of a few periods.
+pub const FEWEST_RADIANS: f64 = 125.0;
 /// Error of a note prepared in integers within the bounds, otherwise as
 /// [`ANY_STRING_DBFS`], dBFS: the squared angle and σ T are rounded to 2^(−56) and
 /// 2^(−36) before they are multiplied by n².
