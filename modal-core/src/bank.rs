@@ -360,7 +360,7 @@ impl<const M: usize> ModeBank<M> for Bank<M> {
         for (resonator, form) in self.resonators.iter_mut().zip(forms(&self.groups)) {
             resonator.state = State::rest(form.shift);
         }
-        self.sounding = 0;
+        (self.sounding, self.last_group, self.last_start) = (0, 0, 0);
     }
 
     fn is_at_rest(&self) -> bool {
